@@ -128,6 +128,7 @@ def _read_settings_file(environment: Mapping[str, str]) -> dict[str, str]:
     wrong = [key for key, value in content.items() if key not in KEYS or not isinstance(value, str)]
     if wrong:
         raise SettingsError(
-            f"the settings file {path} has {', '.join(sorted(wrong))}; it may hold text values for {', '.join(KEYS)} only"
+            f"the settings file {path} has {', '.join(sorted(wrong))}; "
+            f"it may hold text values for {', '.join(KEYS)} only"
         )
     return dict(content)
