@@ -1,0 +1,253 @@
+"""Curves against published values, high-precision arithmetic, a general library and their own laws."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+import mpmath
+import numpy as np
+import pytest
+from commpy.modulation import PSKModem
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from scipy import special, stats
+from scipy.optimize import brentq
+
+from linetest.errors import ParameterError
+from linetest.theory import (
+    SCHEMES,
+    bit_error_rate,
+    required_ebn0_db,
+    symbol_error_rate,
+    trusted_ber_range,
+    union_bound,
+)
+from linetest.theory.curves import SymbolForm
+
+UNCODED = [scheme for scheme in SCHEMES if "+" not in scheme]
+
+# Eb/N0 in dB for a bit error rate: value, half of the last printed digit and a little, recomputed inverse.
+# 1e-5: D. Roddy, Satellite Communications, 4th ed. (2006), section 11.8, p. 333. The others: the usual
+# textbook reading of the BPSK curve (Proakis; Sklar; Lindsey and Simon), from memory.
+PUBLISHED_BPSK = [
+    (1e-3, 6.8, 6.7895),
+    (1e-4, 8.4, 8.3983),
+    (1e-5, 9.6, 9.5879),
+    (1e-6, 10.5, 10.5298),
+    (1e-7, 11.3, 11.3087),
+    (1e-9, 12.6, 12.5495),
+]
+
+
+def exact_tail(x: Any) -> Any:
+    return mpmath.erfc(x / mpmath.sqrt(2)) / 2
+
+
+def exact_antipodal(ebn0_db: float) -> Any:
+    return exact_tail(mpmath.sqrt(2 * mpmath.mpf(10) ** (mpmath.mpf(ebn0_db) / 10)))
+
+
+EXACT: dict[str, Callable[[float], Any]] = {
+    "bpsk": exact_antipodal,
+    "qpsk": exact_antipodal,
+    "de-bpsk": lambda x: 2 * exact_antipodal(x) * (1 - exact_antipodal(x)),
+    "de-qpsk": lambda x: 2 * exact_antipodal(x) * (1 - exact_antipodal(x)),
+}
+
+EXACT_SYMBOL: dict[tuple[str, SymbolForm], Callable[[float], Any]] = {
+    ("bpsk", "exact"): exact_antipodal,
+    ("qpsk", "exact"): lambda x: 1 - (1 - exact_antipodal(x)) ** 2,
+    ("qpsk", "no-square-term"): lambda x: 2 * exact_antipodal(x),
+    ("qpsk", "union-bound"): lambda x: (
+        2 * exact_antipodal(x) + exact_tail(mpmath.sqrt(4 * mpmath.mpf(10) ** (mpmath.mpf(x) / 10)))
+    ),
+    ("de-bpsk", "exact"): EXACT["de-bpsk"],
+    # Lindsey and Simon, Telecommunication Systems Engineering: 4p - 8p^2 + 8p^3 - 4p^4.
+    ("de-qpsk", "exact"): lambda x: (
+        4 * exact_antipodal(x) - 8 * exact_antipodal(x) ** 2 + 8 * exact_antipodal(x) ** 3 - 4 * exact_antipodal(x) ** 4
+    ),
+}
+
+
+@pytest.mark.parametrize("scheme", ["bpsk", "qpsk"])
+@pytest.mark.parametrize(("rate", "printed", "recomputed"), PUBLISHED_BPSK)
+def test_required_ebn0_is_the_published_one(scheme: str, rate: float, printed: float, recomputed: float) -> None:
+    assert required_ebn0_db(scheme, rate) == pytest.approx(printed, abs=0.06)
+    assert required_ebn0_db(scheme, rate) == pytest.approx(recomputed, abs=5e-5)
+
+
+def test_rate_at_ten_db_is_the_worked_example() -> None:
+    """3.9e-6 at Eb/N0 = 10: Roddy, Satellite Communications, 4th ed., section 10.4, p. 305."""
+    assert bit_error_rate("bpsk", 10.0) == pytest.approx(3.9e-6, abs=5e-8)
+    assert bit_error_rate("qpsk", 10.0) == pytest.approx(3.872108215522035e-06, rel=1e-12)
+
+
+def test_rate_at_eight_db_is_the_worked_exercise() -> None:
+    """LNTwww, Modulation Methods, exercise 4.8, evaluated."""
+    assert bit_error_rate("bpsk", 8.0) == pytest.approx(0.00019090777407599314, rel=1e-12)
+
+
+def test_differential_encoding_needs_the_published_ebn0() -> None:
+    """9.9 dB at 1e-5: usual textbook comparison tables (Proakis; Sklar), from memory."""
+    for scheme in ("de-bpsk", "de-qpsk"):
+        assert required_ebn0_db(scheme, 1e-5) == pytest.approx(9.9, abs=0.06)
+        assert required_ebn0_db(scheme, 1e-5) == pytest.approx(9.8926, abs=5e-5)
+
+
+@pytest.mark.parametrize("scheme", EXACT)
+def test_bit_error_rate_equals_high_precision_arithmetic(scheme: str) -> None:
+    for level_db in np.arange(-20.0, 15.6, 0.7):
+        with mpmath.workdps(40):
+            exact = float(EXACT[scheme](float(level_db)))
+        assert bit_error_rate(scheme, float(level_db)) == pytest.approx(exact, rel=1e-12)
+
+
+@pytest.mark.parametrize(("scheme", "form"), EXACT_SYMBOL)
+def test_symbol_error_rate_equals_high_precision_arithmetic(scheme: str, form: SymbolForm) -> None:
+    for level_db in np.arange(-20.0, 15.6, 0.7):
+        with mpmath.workdps(40):
+            exact = float(EXACT_SYMBOL[scheme, form](float(level_db)))
+        assert symbol_error_rate(scheme, float(level_db), form=form) == pytest.approx(exact, rel=1e-12)
+
+
+def test_bpsk_equals_a_general_library_over_an_array() -> None:
+    levels_db = np.linspace(-10.0, 14.0, 241)
+    expected = stats.norm.sf(np.sqrt(2.0 * 10.0 ** (levels_db / 10.0)))
+    np.testing.assert_allclose(bit_error_rate("bpsk", levels_db), expected, rtol=1e-12)
+
+
+def test_simplified_symbol_rates_lie_above_the_exact_one() -> None:
+    levels_db = np.linspace(-5.0, 12.0, 100)
+    exact = symbol_error_rate("qpsk", levels_db)
+    no_square = symbol_error_rate("qpsk", levels_db, form="no-square-term")
+    union = symbol_error_rate("qpsk", levels_db, form="union-bound")
+    assert (exact < no_square).all()
+    assert (no_square < union).all()
+
+
+@pytest.mark.parametrize("level_db", [2.0, 5.0])
+def test_qpsk_agrees_with_a_general_library_simulation(level_db: float) -> None:
+    """Gray QPSK modem of scikit-commpy, hard decisions, noise of our own seed: inside the 99.9 % interval."""
+    rng = np.random.default_rng(20_240_611)
+    modem = PSKModem(4)
+    bits = rng.integers(0, 2, 400_000)
+    symbols = modem.modulate(bits)
+    energy_per_bit = float(np.mean(np.abs(symbols) ** 2)) / 2.0
+    sigma = np.sqrt(energy_per_bit / 10.0 ** (level_db / 10.0) / 2.0)
+    noise = rng.normal(0.0, sigma, (2, symbols.size))
+    decided = modem.demodulate(symbols + noise[0] + 1j * noise[1], "hard")
+    errors = int(np.count_nonzero(decided != bits))
+    low, high = stats.binom.interval(0.999, bits.size, bit_error_rate("qpsk", level_db))
+    assert low <= errors <= high
+
+
+@given(
+    scheme=st.sampled_from(SCHEMES),
+    exponents=st.lists(st.floats(-15.0, -0.53), min_size=1, max_size=20),
+)
+@settings(max_examples=150, deadline=None)
+def test_inverse_comes_back_within_a_billionth_of_a_db(scheme: str, exponents: list[float]) -> None:
+    """The slope of the curve turns a difference of rates into one of dB."""
+    most = trusted_ber_range(scheme)[1]
+    rates = np.minimum(10.0 ** np.array(exponents), most)
+    levels_db = required_ebn0_db(scheme, rates)
+    step_db = 1e-3
+    below, above = bit_error_rate(scheme, levels_db), _rate_anywhere(scheme, levels_db + step_db)
+    slope = np.log(above / below) / step_db
+    assert (np.abs(np.log(below / rates) / slope) <= 1e-9).all()
+
+
+def _rate_anywhere(scheme: str, levels_db: Any) -> Any:
+    return union_bound(scheme, levels_db) if "+" in scheme else bit_error_rate(scheme, levels_db)
+
+
+@pytest.mark.parametrize("scheme", SCHEMES)
+def test_rate_falls_as_ebn0_rises(scheme: str) -> None:
+    least_db = required_ebn0_db(scheme, min(0.3, trusted_ber_range(scheme)[1]))
+    rates = bit_error_rate(scheme, np.linspace(least_db, 17.0, 2000))
+    assert (np.diff(rates) < 0.0).all()
+
+
+@pytest.mark.parametrize("scheme", SCHEMES)
+def test_scalars_give_floats_and_arrays_keep_their_shape(scheme: str) -> None:
+    assert type(bit_error_rate(scheme, 9.0)) is float
+    assert type(bit_error_rate(scheme, np.float64(9.0))) is float
+    assert type(required_ebn0_db(scheme, 1e-6)) is float
+    levels_db = np.full((3, 1, 2), 9.0)
+    assert bit_error_rate(scheme, levels_db).shape == (3, 1, 2)
+    assert required_ebn0_db(scheme, np.full((2, 0), 1e-6)).shape == (2, 0)
+    assert bit_error_rate(scheme, np.array(9.0)).shape == ()
+    assert required_ebn0_db(scheme, np.full((2, 2), 1e-6)) == pytest.approx(required_ebn0_db(scheme, 1e-6))
+    assert bit_error_rate(scheme, 9) == bit_error_rate(scheme, 9.0)
+
+
+def test_coded_bound_needs_the_published_ebn0_of_a_satellite_link() -> None:
+    """ETSI EN 300 421 (IF loop), rate 1/2: 4.5 dB = bound at 2e-4 + outer code's rate + 0.8 dB margin."""
+    inner_db = brentq(lambda level_db: union_bound("qpsk+conv-1/2", level_db) - 2e-4, 2.0, 5.0)
+    assert inner_db + 10.0 * np.log10(204 / 188) + 0.8 == pytest.approx(4.5, abs=0.1)
+
+
+def test_coded_bound_is_the_sum_over_the_spectrum() -> None:
+    """First terms by hand: 36 Q(sqrt(10 g)) + 211 Q(sqrt(12 g)) + ..., nearly alone at 7 dB."""
+    ratio = 10.0**0.7
+    two_terms = 36 * stats.norm.sf(np.sqrt(10 * ratio)) + 211 * stats.norm.sf(np.sqrt(12 * ratio))
+    assert bit_error_rate("qpsk+conv-1/2", 7.0) == pytest.approx(two_terms, rel=0.005)
+    assert bit_error_rate("qpsk+conv-1/2", 7.0) > two_terms
+
+
+def test_rates_far_into_the_tail_keep_their_digits() -> None:
+    assert bit_error_rate("bpsk", 20.0) == pytest.approx(0.5 * special.erfc(10.0), rel=1e-12)
+    assert required_ebn0_db("bpsk", 1e-15) == pytest.approx(14.98758167437028, abs=1e-9)
+
+
+@pytest.mark.parametrize(
+    ("call", "sentence"),
+    [
+        (lambda: bit_error_rate("qpsk", float("nan")), r"ebn0_db is nan, but must be a finite number of dB"),
+        (lambda: bit_error_rate("qpsk", np.array([1.0, np.inf])), r"ebn0_db is inf, but must be a finite"),
+        (lambda: bit_error_rate("psk", 1.0), r"scheme is 'psk', but must be one of bpsk, qpsk"),
+        (
+            lambda: required_ebn0_db("qpsk", 0.5),
+            r"bit_error_rate is 0.5, but must be below 0.5, the rate of guess",
+        ),
+        (lambda: required_ebn0_db("qpsk", 0.0), r"bit_error_rate is 0.0, but must be above 0"),
+        (lambda: required_ebn0_db("qpsk", float("nan")), r"bit_error_rate is nan, but must be above 0"),
+        (lambda: required_ebn0_db("x", 0.1), r"scheme is 'x', but must be one of"),
+        (
+            lambda: required_ebn0_db("qpsk+conv-1/2", 1e-3),
+            r"bit_error_rate is 0.001, but must lie between 0 and 2e-05 for qpsk\+conv-1/2: above it",
+        ),
+        (
+            lambda: bit_error_rate("qpsk+conv-1/2", 3.0),
+            r"ebn0_db is 3.0, but must be at least 3.982 dB for qpsk\+c",
+        ),
+        (
+            lambda: symbol_error_rate("bpsk", 3.0, form="union-bound"),
+            r"form is 'union-bound', but must be one of exa",
+        ),
+        (
+            lambda: symbol_error_rate("qpsk+conv-1/2", 7.0),
+            r"must be a scheme without a code: a decoder decides no",
+        ),
+        (lambda: union_bound("qpsk", 7.0), r"scheme is 'qpsk', but must name a code after a plus sign"),
+        (lambda: trusted_ber_range("nothing"), r"scheme is 'nothing', but must be one of"),
+    ],
+)
+def test_wrong_arguments_are_named_with_value_and_rule(call: Callable[[], object], sentence: str) -> None:
+    with pytest.raises(ParameterError, match=sentence):
+        call()
+
+
+@pytest.mark.parametrize(
+    ("given_value", "sentence"),
+    [
+        ("9", r"ebn0_db is '9', but must be a real number"),
+        (1j, r"ebn0_db is 1j, but must be a real number"),
+        (True, r"ebn0_db is True, but must be a real number"),
+        ([[1.0], [1.0, 2.0]], r"ebn0_db is .* not ragged"),
+    ],
+)
+def test_values_that_are_no_numbers_are_refused(given_value: Any, sentence: str) -> None:
+    with pytest.raises(ParameterError, match=sentence):
+        bit_error_rate("qpsk", given_value)
