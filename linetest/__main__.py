@@ -1,0 +1,5 @@
+"""``python -m linetest`` is the command line."""
+
+from linetest.cli import main
+
+main()

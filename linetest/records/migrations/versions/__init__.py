@@ -1,0 +1,1 @@
+"""Migrations of the record's database, one module a revision."""
