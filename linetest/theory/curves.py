@@ -12,7 +12,7 @@ import numpy as np
 import numpy.typing as npt
 
 from linetest.errors import ParameterError
-from linetest.theory import convolutional, uncoded
+from linetest.theory import convolutional, phase, uncoded
 from linetest.theory.gaussian import (
     ArrayFunction,
     as_float_array,
@@ -65,16 +65,32 @@ _QUADRATURE_SER: Mapping[str, ArrayFunction] = MappingProxyType(
     }
 )
 
+
+def _binary(ber: ArrayFunction, ebn0_db: ArrayFunction) -> Curve:
+    return Curve(ber, ebn0_db, {"exact": ber})
+
+
+_QPSK = Curve(uncoded.antipodal_ber, uncoded.antipodal_ebn0_db, _QUADRATURE_SER)
+_DQPSK = Curve(phase.dqpsk_ber, None, {"exact": phase.dqpsk_ser})
+
 _CURVES: Mapping[str, Curve] = MappingProxyType(
     {
-        "bpsk": Curve(uncoded.antipodal_ber, uncoded.antipodal_ebn0_db, {"exact": uncoded.antipodal_ber}),
-        "qpsk": Curve(uncoded.antipodal_ber, uncoded.antipodal_ebn0_db, _QUADRATURE_SER),
-        "de-bpsk": Curve(
-            uncoded.de_antipodal_ber, uncoded.de_antipodal_ebn0_db, {"exact": uncoded.de_antipodal_ber}
-        ),
-        "de-qpsk": Curve(
-            uncoded.de_antipodal_ber, uncoded.de_antipodal_ebn0_db, {"exact": uncoded.de_quadrature_ser}
-        ),
+        "bpsk": _binary(uncoded.antipodal_ber, uncoded.antipodal_ebn0_db),
+        "qpsk": _QPSK,
+        # Half a symbol between the rails changes nothing for a coherent receiver; MSK is OQPSK with
+        # half-sine pulses, here with the precoder that lets each decision be a bit.
+        "oqpsk": _QPSK,
+        "msk": _binary(uncoded.antipodal_ber, uncoded.antipodal_ebn0_db),
+        "de-bpsk": _binary(uncoded.de_antipodal_ber, uncoded.de_antipodal_ebn0_db),
+        "de-qpsk": Curve(uncoded.de_antipodal_ber, uncoded.de_antipodal_ebn0_db, {"exact": uncoded.de_quadrature_ser}),
+        "dbpsk": _binary(uncoded.dbpsk_ber, uncoded.dbpsk_ebn0_db),
+        "dqpsk": _DQPSK,
+        # The turn of pi/4 that every symbol adds is known to the receiver and drops out.
+        "pi4-dqpsk": _DQPSK,
+        "8psk": Curve(phase.octal_ber, None, {"exact": phase.octal_ser}),
+        "16qam": Curve(uncoded.square_16_ber, None, {"exact": uncoded.square_16_ser}),
+        "fsk-coherent": _binary(uncoded.fsk_coherent_ber, uncoded.fsk_coherent_ebn0_db),
+        "fsk-noncoherent": _binary(uncoded.fsk_noncoherent_ber, uncoded.fsk_noncoherent_ebn0_db),
         "qpsk+conv-1/2": _coded("conv-1/2"),
     }
 )
@@ -171,9 +187,7 @@ def union_bound(scheme: str, ebn0_db: float | FloatArray) -> float | FloatArray:
 def symbol_error_rate(scheme: str, ebn0_db: float, *, form: SymbolForm = "exact") -> float: ...
 @overload
 def symbol_error_rate(scheme: str, ebn0_db: FloatArray, *, form: SymbolForm = "exact") -> FloatArray: ...
-def symbol_error_rate(
-    scheme: str, ebn0_db: float | FloatArray, *, form: SymbolForm = "exact"
-) -> float | FloatArray:
+def symbol_error_rate(scheme: str, ebn0_db: float | FloatArray, *, form: SymbolForm = "exact") -> float | FloatArray:
     """Symbol error rate of a scheme in white Gaussian noise.
 
     Args:

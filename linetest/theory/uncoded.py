@@ -156,3 +156,122 @@ def de_quadrature_ser(ebn0_db: FloatArray) -> FloatArray:
     """
     pair = de_antipodal_ber(ebn0_db)
     return pair * (2.0 - pair)
+
+
+def dbpsk_ber(ebn0_db: FloatArray) -> FloatArray:
+    """Bit error rate of DBPSK by phase comparison: exp(-Eb/N0)/2.
+
+    Args:
+        ebn0_db: Eb/N0 in dB.
+
+    Returns:
+        Bit error rate.
+
+    Source:
+        J. G. Proakis, Digital Communications, 4th ed., eq. 5.2-69.
+    """
+    return np.asarray(0.5 * np.exp(-np.square(amplitude(ebn0_db))), dtype=np.float64)
+
+
+def dbpsk_ebn0_db(bit_error_rate: FloatArray) -> FloatArray:
+    """Inverse of `dbpsk_ber`.
+
+    Args:
+        bit_error_rate: Bit error rate between 0 and 0.5.
+
+    Returns:
+        Eb/N0 in dB.
+    """
+    return np.asarray(10.0 * np.log10(-np.log(2.0 * bit_error_rate)), dtype=np.float64)
+
+
+_HALF_POWER_DB = float(10.0 * np.log10(2.0))
+
+
+def fsk_coherent_ber(ebn0_db: FloatArray) -> FloatArray:
+    """Bit error rate of coherent binary FSK with orthogonal tones: Q(sqrt(Eb/N0)).
+
+    Args:
+        ebn0_db: Eb/N0 in dB.
+
+    Returns:
+        Bit error rate.
+
+    Source:
+        J. G. Proakis, Digital Communications, 4th ed., eq. 5.2-8.
+    """
+    return antipodal_ber(ebn0_db - _HALF_POWER_DB)
+
+
+def fsk_coherent_ebn0_db(bit_error_rate: FloatArray) -> FloatArray:
+    """Inverse of `fsk_coherent_ber`.
+
+    Args:
+        bit_error_rate: Bit error rate between 0 and 0.5.
+
+    Returns:
+        Eb/N0 in dB.
+    """
+    return antipodal_ebn0_db(bit_error_rate) + _HALF_POWER_DB
+
+
+def fsk_noncoherent_ber(ebn0_db: FloatArray) -> FloatArray:
+    """Bit error rate of binary FSK with orthogonal tones and envelope detection: exp(-Eb/(2 N0))/2.
+
+    Args:
+        ebn0_db: Eb/N0 in dB.
+
+    Returns:
+        Bit error rate.
+
+    Source:
+        J. G. Proakis, Digital Communications, 4th ed., eq. 5.4-47 with M = 2.
+    """
+    return dbpsk_ber(ebn0_db - _HALF_POWER_DB)
+
+
+def fsk_noncoherent_ebn0_db(bit_error_rate: FloatArray) -> FloatArray:
+    """Inverse of `fsk_noncoherent_ber`.
+
+    Args:
+        bit_error_rate: Bit error rate between 0 and 0.5.
+
+    Returns:
+        Eb/N0 in dB.
+    """
+    return dbpsk_ebn0_db(bit_error_rate) + _HALF_POWER_DB
+
+
+def square_16_ber(ebn0_db: FloatArray) -> FloatArray:
+    """Bit error rate of 16QAM with the reflected Gray map on each rail, exact.
+
+    (3 Q(d) + 2 Q(3d) - Q(5d))/4 with d = sqrt(4/5 Eb/N0), the noise-scaled half distance of neighbours.
+
+    Args:
+        ebn0_db: Eb/N0 per bit in dB.
+
+    Returns:
+        Bit error rate.
+
+    Source:
+        K. Cho and D. Yoon, IEEE Trans. Commun. 50(7), 2002, pp. 1074-1080.
+    """
+    root = np.sqrt(0.4) * amplitude(ebn0_db)
+    tails = 3.0 * special.erfc(root) + 2.0 * special.erfc(3.0 * root) - special.erfc(5.0 * root)
+    return np.asarray(tails * 0.125, dtype=np.float64)
+
+
+def square_16_ser(ebn0_db: FloatArray) -> FloatArray:
+    """Symbol error rate of 16QAM, exact: 1 - (1 - 3/2 Q(d))**2 with d = sqrt(4/5 Eb/N0).
+
+    Args:
+        ebn0_db: Eb/N0 per bit in dB.
+
+    Returns:
+        Symbol error rate.
+
+    Source:
+        J. G. Proakis, Digital Communications, 4th ed., eq. 5.2-78 and 5.2-79.
+    """
+    rail = 0.75 * special.erfc(np.sqrt(0.4) * amplitude(ebn0_db))
+    return np.asarray(rail * (2.0 - rail), dtype=np.float64)
