@@ -75,9 +75,7 @@ def check_supply(bay: Bay) -> Iterator[Event]:
     bay.clock.sleep_s(limits.settle_s)
     yield bay.reading("supply", "voltage", supply.read_voltage_v(), "V")
     current_a = supply.read_current_a()
-    yield bay.reading(
-        "supply", "current", current_a, "A", lower=limits.min_current_a, upper=limits.max_current_a
-    )
+    yield bay.reading("supply", "current", current_a, "A", lower=limits.min_current_a, upper=limits.max_current_a)
     if current_a < limits.min_current_a:
         sentence = f"the unit draws {current_a:.3f} A, less than {limits.min_current_a:.3f} A: open, or dead"
     elif current_a > limits.max_current_a:

@@ -189,14 +189,10 @@ class Sequencer:
     def _carrier_again(self, bay: Bay, before: CarrierReading) -> Iterator[Event]:
         """Read the carrier once more: what was set holds only if the carrier stayed."""
         self._station.noise_source.output_off()
-        after = read_carrier(
-            self._station, self._calibration, now=self._clock.now, sleep_s=self._clock.sleep_s
-        )
+        after = read_carrier(self._station, self._calibration, now=self._clock.now, sleep_s=self._clock.sleep_s)
         allowed_db = self._sheet.procedure.carrier.max_change_db
         change_db = after.power_dbm - before.power_dbm
-        yield bay.reading(
-            "carrier", "carrier power after", after.power_dbm, "dBm", standard_uncertainty=after.u_db
-        )
+        yield bay.reading("carrier", "carrier power after", after.power_dbm, "dBm", standard_uncertainty=after.u_db)
         yield bay.reading("carrier", "carrier change", change_db, "dB", lower=-allowed_db, upper=allowed_db)
         if abs(change_db) > allowed_db:
             raise CarrierMovedError(
@@ -210,9 +206,7 @@ class Sequencer:
 
     def _void(self, reason: LinetestError) -> Ending:
         if self._stop.is_set() and isinstance(reason, (LinkAborted, StoppedError)):
-            return Ending(
-                Disposition.VOID, "stopped", "stopped by the operator or by a signal: test the unit again"
-            )
+            return Ending(Disposition.VOID, "stopped", "stopped by the operator or by a signal: test the unit again")
         return Ending(Disposition.VOID, _cause(reason, self._station), str(reason))
 
 
@@ -257,9 +251,7 @@ def _cause(reason: LinetestError, station: Station) -> str:
         case CalibrationError():
             return "calibration"
         case LinkError():
-            role = next(
-                (i.role for i in station.sheet.instruments if i.resource == reason.resource), "instrument"
-            )
+            role = next((i.role for i in station.sheet.instruments if i.resource == reason.resource), "instrument")
             return f"instrument fault: {role.replace('_', ' ')}"
         case _:
             return "station"

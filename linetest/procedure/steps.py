@@ -143,9 +143,7 @@ def _count(bay: Bay, task: StepTask, plan: Plan, mode: Mode) -> Generator[Event,
         if outcome is not Outcome.CONTINUE or now_s - shown_s >= SHOW_EVERY_S:
             shown_s = now_s
             nearness = plan.nearness(counts.bits, counts.errors)
-            yield StepProgress(
-                task.check.name, task.number, counts.bits, counts.errors, nearness, bay.clock.now()
-            )
+            yield StepProgress(task.check.name, task.number, counts.bits, counts.errors, nearness, bay.clock.now())
         if outcome is not Outcome.CONTINUE:
             port.stop_count()
             return last
@@ -153,13 +151,9 @@ def _count(bay: Bay, task: StepTask, plan: Plan, mode: Mode) -> Generator[Event,
 
 def _trust(counts: Counts, before: Counts, wanted: int) -> None:
     if counts.errors > counts.bits:
-        raise CountError(
-            f"the error counter says {counts.errors} errors in {counts.bits} bits; check the counter"
-        )
+        raise CountError(f"the error counter says {counts.errors} errors in {counts.bits} bits; check the counter")
     if counts.bits < wanted:
-        raise CountError(
-            f"the error counter stopped at {counts.bits} bits, asked for {wanted}; check its gate"
-        )
+        raise CountError(f"the error counter stopped at {counts.bits} bits, asked for {wanted}; check its gate")
     if counts.errors < before.errors or counts.lost_bits < before.lost_bits:
         raise CountError(
             f"the error counter fell from {before.errors} to {counts.errors} errors: it was reset while counting"
@@ -172,16 +166,12 @@ def _judge(bay: Bay, task: StepTask, limit: StepLimit, counts: Counts, facts: di
     lost = counts.lost_bits / max(1, counts.bits + counts.lost_bits)
     if lost > task.check.max_lost_fraction:
         allowed = task.check.max_lost_fraction
-        return _undecided(
-            bay, task, f"{lost:.2%} of the bits fell into lost alignment, more than {allowed:.2%}", facts
-        )
+        return _undecided(bay, task, f"{lost:.2%} of the bits fell into lost alignment, more than {allowed:.2%}", facts)
     if accepted:
         sentence = f"shown inside the guarded limit {plan.limit_ber:.3g} at Eb/N0 {facts['ebn0_db']:.2f} dB"
         judgement = Judgement.ACCEPT
     else:
-        sentence = (
-            f"not shown inside the guarded limit {plan.limit_ber:.3g} at Eb/N0 {facts['ebn0_db']:.2f} dB"
-        )
+        sentence = f"not shown inside the guarded limit {plan.limit_ber:.3g} at Eb/N0 {facts['ebn0_db']:.2f} dB"
         judgement = Judgement.REJECT
     counted = f"{counts.errors} errors in {counts.bits} bits, "
     return Judged(task.check.name, task.number, judgement, counted + sentence, bay.clock.now(), facts)

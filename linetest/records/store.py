@@ -6,7 +6,7 @@ returns. What the screen shows after that is never lost.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import asdict
 from datetime import datetime
@@ -152,9 +152,7 @@ class Store:
         open_runs = (tables.runs.c.station == station) & tables.runs.c.ended_at.is_(None)
         with self._writing() as connection:
             found = connection.execute(
-                select(tables.runs.c.run_id, tables.runs.c.serial)
-                .where(open_runs)
-                .order_by(tables.runs.c.started_at)
+                select(tables.runs.c.run_id, tables.runs.c.serial).where(open_runs).order_by(tables.runs.c.started_at)
             ).all()
             connection.execute(
                 update(tables.runs)
@@ -175,9 +173,7 @@ class Store:
             RecordError: It could not be kept.
         """
         with self._writing() as connection:
-            connection.execute(
-                insert(tables.calibrations).values(**asdict(record), station=station, content=content)
-            )
+            connection.execute(insert(tables.calibrations).values(**asdict(record), station=station, content=content))
 
     def latest_calibration(self, station: str) -> tuple[CalibrationRecord, str] | None:
         """The newest noise calibration of a station.
@@ -193,10 +189,7 @@ class Store:
         """
         columns = tables.calibrations.c
         query = (
-            select(tables.calibrations)
-            .where(columns.station == station)
-            .order_by(columns.started_at.desc())
-            .limit(1)
+            select(tables.calibrations).where(columns.station == station).order_by(columns.started_at.desc()).limit(1)
         )
         with self.reading() as connection:
             row = connection.execute(query).mappings().first()
@@ -222,9 +215,7 @@ class Store:
             connection.execute(insert(table).values(run_id=self._run_id, seq=sequence, **row))
             if row.get("name") == "firmware":
                 connection.execute(
-                    update(tables.runs)
-                    .where(tables.runs.c.run_id == self._run_id)
-                    .values(firmware=row["text_value"])
+                    update(tables.runs).where(tables.runs.c.run_id == self._run_id).values(firmware=row["text_value"])
                 )
         self._sequence[table.name] = sequence
 
@@ -296,7 +287,7 @@ class Store:
             return int(connection.execute(select(func.count()).select_from(tables.runs)).scalar_one())
 
 
-def calibration_record(row: Mapping[str, Any]) -> CalibrationRecord:
+def calibration_record(row: Any) -> CalibrationRecord:
     """A row of the calibrations table as a value.
 
     Args:
@@ -347,9 +338,7 @@ def _engine(url: str) -> Engine:
         try:
             folder.mkdir(parents=True, exist_ok=True)
         except OSError as reason:
-            raise RecordError(
-                f"the folder {folder} for the database cannot be made: {reason.strerror}"
-            ) from reason
+            raise RecordError(f"the folder {folder} for the database cannot be made: {reason.strerror}") from reason
     engine = create_engine(parsed)
     if engine.dialect.name == "sqlite":
         event.listen(engine, "connect", _prepare_sqlite)
