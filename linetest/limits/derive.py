@@ -1,0 +1,304 @@
+"""From curve to limit: what a step is judged by at the Eb/N0 really set, with its derivation kept beside it.
+
+BER_limit = theory(Eb/N0 - margin). The plan tells a unit at the design loss from one at the margin with both
+risks averaged over the uncertainty of Eb/N0. Nothing here measures; the same sheet, Eb/N0 and uncertainty give
+the same limit on any machine.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import lru_cache
+from typing import Any, Literal
+
+import numpy as np
+
+from linetest.decision import GuardedPlan, design_guarded_plan, fixed_test_bits
+from linetest.errors import ParameterError, PlanError
+from linetest.limits.sheet import BerCheck, LimitSheet, Mode
+from linetest.theory import bit_error_rate, trusted_ber_range, union_bound
+from linetest.units import FloatArray
+
+# A look no finer than this share of the best fixed test costs less than 1 % in mean bits.
+LOOKS_PER_FIXED_TEST = 60
+
+# Units differ by less than this in u; planning for the next multiple above lets them share plans.
+PLANNED_U_STEP_DB = 0.005
+
+GuardRule = Literal["least", "U", "0.83U", "none"]
+
+
+@dataclass(frozen=True)
+class PlanRequest:
+    """All that a plan of a step follows from; equal requests give equal plans.
+
+    Attributes:
+        scheme: Modulation and coding.
+        burst_weights: How errors come in groups.
+        bit_rate_bps: Information bit rate, bit/s.
+        ebn0_db: Eb/N0 really set, dB.
+        u_db: Standard uncertainty planned for, dB.
+        margin_db: Margin, dB.
+        design_loss_db: Design loss, dB.
+        producer_risk: Producer's risk of the step.
+        consumer_risk: Consumer's risk of the step.
+        guard_rule: How guard bands follow from u.
+        max_bits: Most bits by the sheet.
+        max_fixed_tests: Most bits in best fixed tests.
+        shortest_gate_s: Shortest gate of the error counter, s.
+    """
+
+    scheme: str
+    burst_weights: tuple[tuple[int, float], ...]
+    bit_rate_bps: float
+    ebn0_db: float
+    u_db: float
+    margin_db: float
+    design_loss_db: float
+    producer_risk: float
+    consumer_risk: float
+    guard_rule: GuardRule
+    max_bits: int
+    max_fixed_tests: float
+    shortest_gate_s: float
+
+
+@dataclass(frozen=True)
+class StepLimit:
+    """What one step of one unit is judged by.
+
+    Attributes:
+        check: Name of the BER check.
+        mode: Name of the mode.
+        scheme: Modulation and coding.
+        bit_rate_bps: Information bit rate, bit/s.
+        nominal_ebn0_db: Eb/N0 that the sheet asks for, dB.
+        ebn0_db: Eb/N0 really set, dB.
+        u_db: Its standard uncertainty, dB. The plan holds for `guarded.u_db`, the same or a little more.
+        margin_db: Implementation loss a unit must not exceed, dB.
+        design_loss_db: Implementation loss of a good unit, dB.
+        theory_ber: The scheme's bit error rate at `ebn0_db`.
+        limit_ber: The same at `ebn0_db` - `margin_db`.
+        design_ber: The same at `ebn0_db` - `design_loss_db`.
+        best_fixed_bits: Bits of the best fixed test of `design_ber` against `limit_ber`.
+        guarded: The plan with its guard bands and risks.
+        sources: Source of each number of the sheet that entered, by key.
+    """
+
+    check: str
+    mode: str
+    scheme: str
+    bit_rate_bps: float
+    nominal_ebn0_db: float
+    ebn0_db: float
+    u_db: float
+    margin_db: float
+    design_loss_db: float
+    theory_ber: float
+    limit_ber: float
+    design_ber: float
+    best_fixed_bits: int
+    guarded: GuardedPlan
+    sources: tuple[tuple[str, str], ...]
+
+    @property
+    def derivation(self) -> dict[str, Any]:
+        """How the limit came about, as plain data for JSON: from the curve to the numbers counted against."""
+        guarded, plan = self.guarded, self.guarded.plan
+        return {
+            "check": self.check,
+            "mode": self.mode,
+            "scheme": self.scheme,
+            "bit_rate_bps": self.bit_rate_bps,
+            "nominal_ebn0_db": self.nominal_ebn0_db,
+            "ebn0_db": self.ebn0_db,
+            "u_db": self.u_db,
+            "planned_u_db": guarded.u_db,
+            "theory_ber": self.theory_ber,
+            "margin_db": self.margin_db,
+            "limit_ber": self.limit_ber,
+            "design_loss_db": self.design_loss_db,
+            "design_ber": self.design_ber,
+            "guard_rule": guarded.rule,
+            "guard_consumer_db": guarded.guard_consumer_db,
+            "guard_producer_db": guarded.guard_producer_db,
+            "guarded_limit_ber": plan.limit_ber,
+            "guarded_good_ber": plan.good_ber,
+            "counting_consumer_risk": plan.consumer_risk,
+            "counting_producer_risk": plan.producer_risk,
+            "averaged_consumer_risk": guarded.averaged_consumer_risk,
+            "averaged_producer_risk": guarded.averaged_producer_risk,
+            "burst_weights": [list(pair) for pair in plan.burst_weights],
+            "best_fixed_bits": self.best_fixed_bits,
+            "look_bits": plan.look_bits,
+            "max_bits": plan.max_bits,
+            "sources": dict(self.sources),
+        }
+
+
+def limit_curve(scheme: str) -> Callable[[FloatArray], FloatArray]:
+    """Curve for averaging over the error of Eb/N0: theory, also a little outside its trusted region.
+
+    A coded scheme's bound runs on where it is no longer trusted to carry a limit: there it only weighs
+    errors of Eb/N0 of several standard uncertainties, at which the unit is rejected anyway.
+
+    Args:
+        scheme: Modulation and coding.
+
+    Returns:
+        Function from Eb/N0 in dB to bit error rate, arrays of any shape.
+    """
+    if trusted_ber_range(scheme)[1] >= 0.5:
+        return lambda ebn0_db: bit_error_rate(scheme, np.asarray(ebn0_db, dtype=np.float64))
+    return lambda ebn0_db: np.minimum(union_bound(scheme, np.asarray(ebn0_db, dtype=np.float64)), 0.5)
+
+
+def derive_step(
+    sheet: LimitSheet,
+    check: BerCheck,
+    nominal_ebn0_db: float,
+    *,
+    ebn0_db: float,
+    u_db: float,
+    shortest_gate_s: float,
+) -> StepLimit:
+    """The limit and plan of a step at the Eb/N0 really set.
+
+    Args:
+        sheet: The limit sheet.
+        check: One of its BER checks.
+        nominal_ebn0_db: One of the check's steps, dB.
+        ebn0_db: Eb/N0 really set, dB.
+        u_db: Its standard uncertainty, dB.
+        shortest_gate_s: Shortest gate of the error counter, s.
+
+    Returns:
+        The limit, with its derivation.
+
+    Raises:
+        ParameterError: The step is not the check's, or a number is outside its rule.
+        PlanError: The Eb/N0 set is too far from the nominal one, its uncertainty is more than the sheet
+            carries, or no plan keeps the risks within the most bits.
+    """
+    _check_numbers(check, nominal_ebn0_db, ebn0_db, u_db, shortest_gate_s)
+    mode = sheet.mode(check.mode)
+    request = plan_request(check, mode, ebn0_db=ebn0_db, u_db=u_db, shortest_gate_s=shortest_gate_s)
+    best_fixed_bits, guarded = plan_for(request)
+    return StepLimit(
+        check=check.name,
+        mode=mode.name,
+        scheme=mode.scheme,
+        bit_rate_bps=mode.bit_rate_bps,
+        nominal_ebn0_db=nominal_ebn0_db,
+        ebn0_db=ebn0_db,
+        u_db=u_db,
+        margin_db=check.margin_db,
+        design_loss_db=check.design_loss_db,
+        theory_ber=float(limit_curve(mode.scheme)(np.array(ebn0_db))),
+        limit_ber=bit_error_rate(mode.scheme, ebn0_db - check.margin_db),
+        design_ber=bit_error_rate(mode.scheme, ebn0_db - check.design_loss_db),
+        best_fixed_bits=best_fixed_bits,
+        guarded=guarded,
+        sources=tuple(sorted({**mode.source, **check.source}.items())),
+    )
+
+
+def _check_numbers(
+    check: BerCheck, nominal_ebn0_db: float, ebn0_db: float, u_db: float, shortest_gate_s: float
+) -> None:
+    if nominal_ebn0_db not in check.steps:
+        steps = ", ".join(f"{step:g}" for step in check.steps)
+        raise ParameterError("nominal_ebn0_db", nominal_ebn0_db, f"be a step of {check.name} ({steps} dB)")
+    if not math.isfinite(ebn0_db):
+        raise ParameterError("ebn0_db", ebn0_db, "be finite")
+    if not (math.isfinite(u_db) and u_db >= 0.0):
+        raise ParameterError("u_db", u_db, "be finite and not negative")
+    if not (math.isfinite(shortest_gate_s) and shortest_gate_s > 0.0):
+        raise ParameterError("shortest_gate_s", shortest_gate_s, "be finite and above 0")
+    offset_db = ebn0_db - nominal_ebn0_db
+    # Both are rounded to 0.01 dB; a difference of exactly the tolerance must not fail by its last bit.
+    if abs(offset_db) > check.tolerance_db + 1e-9:
+        raise PlanError(
+            f"Eb/N0 would be {ebn0_db:.2f} dB, {offset_db:+.2f} dB off the nominal {nominal_ebn0_db:g} dB; "
+            f"{check.name} allows {check.tolerance_db:g} dB: calibrate the noise in finer steps"
+        )
+    if u_db > check.max_u_db:
+        raise PlanError(
+            f"the standard uncertainty of Eb/N0 is {u_db:.3f} dB, more than the {check.max_u_db:g} dB that "
+            f"{check.name} carries: improve the noise calibration"
+        )
+
+
+def plan_request(check: BerCheck, mode: Mode, *, ebn0_db: float, u_db: float, shortest_gate_s: float) -> PlanRequest:
+    """What the plan of a step follows from.
+
+    Args:
+        check: The BER check.
+        mode: Its mode.
+        ebn0_db: Eb/N0 really set, dB.
+        u_db: Its standard uncertainty, dB; planned for the next multiple of `PLANNED_U_STEP_DB` above, but
+            for no more than the check carries.
+        shortest_gate_s: Shortest gate of the error counter, s.
+
+    Returns:
+        The request, equal for equal content.
+    """
+    planned_u_db = round(math.ceil(round(u_db / PLANNED_U_STEP_DB, 6)) * PLANNED_U_STEP_DB, 6)
+    return PlanRequest(
+        scheme=mode.scheme,
+        burst_weights=mode.burst_weights,
+        bit_rate_bps=mode.bit_rate_bps,
+        ebn0_db=ebn0_db,
+        u_db=max(u_db, min(planned_u_db, check.max_u_db)),
+        margin_db=check.margin_db,
+        design_loss_db=check.design_loss_db,
+        producer_risk=check.step_producer_risk,
+        consumer_risk=check.consumer_risk,
+        guard_rule=check.guard_rule,
+        max_bits=check.max_bits,
+        max_fixed_tests=check.max_fixed_tests,
+        shortest_gate_s=shortest_gate_s,
+    )
+
+
+@lru_cache(maxsize=4096)
+def plan_for(request: PlanRequest) -> tuple[int, GuardedPlan]:
+    """The plan that a request asks for; asked again, the same object.
+
+    Args:
+        request: What the plan follows from.
+
+    Returns:
+        Bits of the best fixed test without guard bands, and the plan.
+
+    Raises:
+        PlanError: No plan keeps the risks.
+        ParameterError: Eb/N0 less the margin is outside the curve's trusted region.
+    """
+    limit_ber = bit_error_rate(request.scheme, request.ebn0_db - request.margin_db)
+    design_ber = bit_error_rate(request.scheme, request.ebn0_db - request.design_loss_db)
+    best_fixed_bits = fixed_test_bits(
+        good_ber=design_ber,
+        limit_ber=limit_ber,
+        producer_risk=request.producer_risk,
+        consumer_risk=request.consumer_risk,
+        burst_weights=request.burst_weights,
+    )
+    gate_bits = math.ceil(request.bit_rate_bps * request.shortest_gate_s)
+    look_bits = max(best_fixed_bits // LOOKS_PER_FIXED_TEST, gate_bits, 1)
+    guarded = design_guarded_plan(
+        curve=limit_curve(request.scheme),
+        ebn0_db=request.ebn0_db,
+        u_db=request.u_db,
+        margin_db=request.margin_db,
+        design_loss_db=request.design_loss_db,
+        producer_risk=request.producer_risk,
+        consumer_risk=request.consumer_risk,
+        look_bits=look_bits,
+        max_bits=min(request.max_bits, math.ceil(request.max_fixed_tests * best_fixed_bits)),
+        burst_weights=request.burst_weights,
+        rule=request.guard_rule,
+    )
+    return best_fixed_bits, guarded
