@@ -1,0 +1,50 @@
+"""Noise that can be trusted: calibration, uncertainty budget, setting Eb/N0.
+
+The map, in the order data takes:
+
+- `budget`: quantities, models, and what they make of a result's uncertainty (GUM)
+- `montecarlo`: the same by propagation of distributions (JCGM 101)
+- `model`: the measurement's model, from meter readings to Eb/N0
+- `station`: what is needed of a station
+- `calibration`: a noise calibration as a value; whether it holds now
+- `sanity`: readings that no working station gives
+- `measure`: measuring the noise of a station and the carrier of a unit
+- `setting`: the attenuator setting of a step and the Eb/N0 that is really there
+"""
+
+from linetest.noise.budget import Budget, Contribution, Quantity, covariance, coverage_factor, evaluate
+from linetest.noise.calibration import CalibratedWith, NoiseCalibration, check_current
+from linetest.noise.measure import CalibrationProgress, CarrierReading, calibrate_noise, read_carrier
+from linetest.noise.montecarlo import MonteCarloResult, propagate
+from linetest.noise.setting import (
+    EbN0Setting,
+    ebn0_budget,
+    ebn0_monte_carlo,
+    set_ebn0,
+    step_covariance_db2,
+)
+from linetest.noise.station import NoiseStation
+
+__all__ = [
+    "Budget",
+    "CalibratedWith",
+    "CalibrationProgress",
+    "CarrierReading",
+    "Contribution",
+    "EbN0Setting",
+    "MonteCarloResult",
+    "NoiseCalibration",
+    "NoiseStation",
+    "Quantity",
+    "calibrate_noise",
+    "check_current",
+    "covariance",
+    "coverage_factor",
+    "ebn0_budget",
+    "ebn0_monte_carlo",
+    "evaluate",
+    "propagate",
+    "read_carrier",
+    "set_ebn0",
+    "step_covariance_db2",
+]
