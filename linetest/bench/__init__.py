@@ -16,7 +16,7 @@ from linetest.bench.sheet import write_station_sheet
 from linetest.bench.station import Bench
 from linetest.bench.symbols import ErrorProcess, count_by_symbols
 from linetest.bench.truth import DataSheet, Truth
-from linetest.bench.units import Planted, UnitTruth, demo_lot, unit_truth
+from linetest.bench.units import Planted, UnitTruth, demo_lot, model_truth, unit_truth
 
 __all__ = [
     "Bench",
@@ -28,6 +28,7 @@ __all__ = [
     "UnitTruth",
     "count_by_symbols",
     "demo_lot",
+    "model_truth",
     "serve",
     "unit_truth",
     "write_station_sheet",

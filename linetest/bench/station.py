@@ -164,7 +164,8 @@ class Bench:
         """Current that the unit draws now, A."""
         if self.unit is None or not self.supply_on or self.voltage_v < 1.0:
             return 0.0
-        return min(self.current_limit_a, self.unit.current_a + 0.0005 * float(self._rng.standard_normal()))
+        drawn_a = self.unit.current_a + 0.0005 * float(self._rng.standard_normal())
+        return float(np.clip(drawn_a, 0.0, self.current_limit_a))
 
     def load(self, serial: str) -> bool:
         """Place a unit in the fixture; an instrument's planted fault comes with its first visit only.

@@ -43,6 +43,18 @@ MODELS = {
 }
 
 
+def model_truth(modulation: str) -> ModelTruth:
+    """An uncoded model at 2.048 Mbit/s, for comparisons with theory.
+
+    Args:
+        modulation: ``qpsk`` or ``bpsk``.
+
+    Returns:
+        The model.
+    """
+    return ModelTruth("ideal", "ideal", modulation, 2.048e6)
+
+
 @dataclass(frozen=True, slots=True)
 class InstrumentFault:
     """A fault of an instrument while a unit is in the fixture, the first time it is loaded.

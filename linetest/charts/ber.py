@@ -50,6 +50,8 @@ class BerPoint:
         name: Short name written beside the point, as the step's number.
         judgement: `ACCEPT` (dot), `REJECT` (cross), anything else (hollow dot).
         guarded_limit_ber: Limit that the plan tested against, None to leave it out.
+        estimate: Bit error rate to draw; after a sequential stop errors by bits is biased and may lie outside the
+            interval. None for errors by bits.
     """
 
     ebn0_db: float
@@ -61,17 +63,18 @@ class BerPoint:
     name: str = ""
     judgement: str = "ACCEPT"
     guarded_limit_ber: float | None = None
+    estimate: float | None = None
 
     def __post_init__(self) -> None:
         if not 0 <= self.errors <= self.bits or self.bits < 1:
             raise ParameterError("errors", self.errors, f"lie between 0 and the {self.bits} bits counted")
-        if not 0.0 <= self.low <= self.errors / self.bits <= self.high <= 1.0:
-            raise ParameterError("low, high", (self.low, self.high), "hold the error rate counted")
+        if not 0.0 <= self.low <= self.ber <= self.high <= 1.0:
+            raise ParameterError("low, high", (self.low, self.high), f"hold the bit error rate of {self.ber:.3g}")
 
     @property
     def ber(self) -> float:
-        """Errors by bits."""
-        return self.errors / self.bits
+        """The estimate where there is one, else errors by bits."""
+        return self.errors / self.bits if self.estimate is None else self.estimate
 
 
 def theory_curve(

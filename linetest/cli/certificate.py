@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
 from linetest.cli.options import AsJson, Database
+
+if TYPE_CHECKING:
+    from linetest.records import Store
 
 app = typer.Typer(help="The customer's certificate.", no_args_is_help=True, rich_markup_mode=None)
 
@@ -60,9 +63,9 @@ def write_certificate(store: Store, serial: str, folder: Path, templates_folder:
         CertificateError: The unit's last judged run did not pass, or the folder cannot be written.
     """
     from linetest.certificates import certificate_file_name, render_certificate
-    from linetest.errors import CertificateError, SerialError
     from linetest.cli.files import write_whole
-    from linetest.records import Store, runs_of
+    from linetest.errors import CertificateError, SerialError
+    from linetest.records import runs_of
 
     runs = runs_of(store, serial)
     if not runs:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import subprocess
 import sys
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
@@ -15,6 +15,8 @@ import typer
 if TYPE_CHECKING:
     from rich.console import Console
 
+    from linetest.bench import Planted
+    from linetest.cli.session import Session
     from linetest.procedure import RunEnded
     from linetest.records import Store
     from linetest.settings import Settings
@@ -39,6 +41,7 @@ def run_demo(
     from rich.console import Console
 
     from linetest.cli.session import open_session
+    from linetest.cli.shift import CAUTIONS
     from linetest.settings import load_settings
 
     console = Console(highlight=False)
@@ -54,8 +57,9 @@ def run_demo(
     )
     with _bench_process(sheet_file, seed) as resources:
         _tell_bench(console, resources)
+        console.print(CAUTIONS, style="bold", markup=False)
         with open_session(settings, console.print) as session:
-            _prepare(console, session)
+            _prepare(console, session, sheet_file)
             ends = _run_lot(console, session)
             certificates = _issue_certificates(session.store, settings)
             page = _write_yield_page(console, session.store, settings, output)
@@ -81,7 +85,9 @@ def _bench_process(sheet_file: Path, seed: int) -> Iterator[dict[str, str]]:
     try:
         line = process.stdout.readline() if process.stdout else ""
         if not line:
-            raise StationError(f"the simulated station did not start (exit code {process.wait(5)}); see its message above")
+            raise StationError(
+                f"the simulated station did not start (exit code {process.wait(5)}); see its message above"
+            )
         yield json.loads(line)
     finally:
         process.terminate()
@@ -98,19 +104,18 @@ def _tell_bench(console: Console, resources: dict[str, str]) -> None:
         console.print(f"  {role.replace('_', ' '):14} {resource}", markup=False)
 
 
-def _prepare(console: Console, session: Session) -> None:
-    from linetest.cli.shift import CAUTIONS
-    from linetest.cli.station import calibrate_session, check_session
+def _prepare(console: Console, session: Session, station_file: Path) -> None:
+    from linetest.cli.station import calibrate_session, print_findings
+    from linetest.instruments import check_station
 
-    console.print(CAUTIONS, style="bold", markup=False)
     console.print("\nStation check", style="bold")
-    check_session(console, session)
+    print_findings(console, check_station(session.sheet, now=session.clock.now, folder=station_file.parent))
     console.print("\nNoise calibration", style="bold")
     calibrate_session(console, session)
 
 
-def _run_lot(console: Console, session: Session) -> list[tuple[str, RunEnded]]:
-    """Run the lot, then once more the units whose run was VOID for an instrument's sake."""
+def _run_lot(console: Console, session: Session) -> list[tuple[Planted, RunEnded]]:
+    """Run the lot, then once more the units whose first run was VOID, as a technician would."""
     from linetest.bench import demo_lot
     from linetest.cli.screen import Screen
     from linetest.cli.shift import test_unit
@@ -119,11 +124,63 @@ def _run_lot(console: Console, session: Session) -> list[tuple[str, RunEnded]]:
 
     sheets = list_sheets(shipped_folder("limits"))
     screen = Screen(console, brief=True)
-    ends: list[tuple[str, RunEnded]] = []
-    console.print(f"\nLot {LOT}", style="bold")
-    for planted in demo_lot():
+
+    def tested(planted: Planted) -> RunEnded:
         ended = test_unit(session, sheets, planted.serial, lot=LOT, operator=OPERATOR, show=screen.show)
-        ends.append((planted.serial, ended))
         if session.interrupts.stop.is_set():
             raise typer.Exit(3)
+        return ended
+
+    try:
+        console.print(f"\nLot {LOT}", style="bold")
+        ends = [(planted, tested(planted)) for planted in demo_lot()]
+        console.print("\nVOID units once more", style="bold")
+        for planted, ended in ends:
+            if ended.disposition == "VOID":
+                tested(planted)
+    finally:
+        screen.close()
     return ends
+
+
+def _issue_certificates(store: Store, settings: Settings) -> list[Path]:
+    from linetest.cli.certificate import write_certificate
+    from linetest.records import run_summaries
+
+    passed = {run.serial for run in run_summaries(store) if run.disposition == "PASS"}
+    return [
+        write_certificate(store, serial, settings.certificates_folder, settings.templates_folder)
+        for serial in sorted(passed)
+    ]
+
+
+def _write_yield_page(console: Console, store: Store, settings: Settings, output: Path) -> Path:
+    from linetest.cli.files import write_whole
+    from linetest.cli.trends import print_yield
+    from linetest.records import run_summaries
+    from linetest.trends import first_pass_yield, render_yield_page
+
+    report = first_pass_yield(run_summaries(store))
+    page = output / "yield.html"
+    write_whole(page, render_yield_page(report, templates_folder=settings.templates_folder))
+    console.print("\nThe lot", style="bold")
+    print_yield(report)
+    return page
+
+
+def _compare(console: Console, ends: list[tuple[Planted, RunEnded]]) -> bool:
+    """Hold each first disposition against what was planted; the program itself never sees the plant."""
+    from rich.table import Table
+    from rich.text import Text
+
+    console.print("\nPlanted against found", style="bold")
+    table = Table("serial", "planted", "expected", "found", "", box=None, pad_edge=False)
+    agreed = True
+    for planted, ended in ends:
+        right = planted.expected in {"EITHER", ended.disposition}
+        agreed = agreed and right
+        found = f"{ended.disposition} {ended.cause}".strip()
+        mark = Text("✔", style="green") if right else Text("✘", style="red")
+        table.add_row(planted.serial, planted.reason, planted.expected, found, mark)
+    console.print(table)
+    return agreed

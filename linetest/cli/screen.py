@@ -48,10 +48,12 @@ class Screen:
 
     Args:
         console: Where to draw.
+        brief: One line a unit instead of every judgement and the large result, for long lists.
     """
 
-    def __init__(self, console: Console) -> None:
+    def __init__(self, console: Console, *, brief: bool = False) -> None:
         self._console = console
+        self._brief = brief
         self._live: Live | None = None
         self._serial = ""
         self._head = ""
@@ -111,19 +113,30 @@ class Screen:
 
     def _end(self, ended: RunEnded) -> None:
         self.close()
+        if self._brief:
+            word = Text(f" {ended.disposition} ", style=_RESULT_STYLES[ended.disposition])
+            self._console.print(
+                Text.assemble(f"{self._serial}  ", word, f"  {ended.sentence}"), overflow="ellipsis", no_wrap=True
+            )
+            self._print_unsafe(ended)
+            return
         for line in self._lines:
             self._console.print(line)
         style = _RESULT_STYLES[ended.disposition]
-        word = "  ".join(ended.disposition)
+        spaced = "  ".join(ended.disposition)
         body = Text(justify="center")
-        body.append(f"\n   {word}   \n", style=style)
+        body.append(f"\n   {spaced}   \n", style=style)
         body.append(f"\n{self._serial}", style="bold")
         body.append(f"\n{_WHAT_NEXT[ended.disposition]}")
         if ended.disposition is not Disposition.PASS:
             body.append(f"\n\n{ended.sentence}")
-        for role, why in ended.unsafe.items():
-            body.append(f"\nNOT SAFE: {role.replace('_', ' ')}: {why}. Switch it off by hand.", style="bold red")
         self._console.print(Panel(body, border_style=style.rsplit(" ", maxsplit=1)[-1], padding=(0, 2)))
+        self._print_unsafe(ended)
+
+    def _print_unsafe(self, ended: RunEnded) -> None:
+        for role, why in ended.unsafe.items():
+            words = f"NOT SAFE: {role.replace('_', ' ')}: {why}. Switch it off by hand."
+            self._console.print(Text(words, style="bold red"))
 
     def _drawn(self) -> RenderableType:
         parts: list[RenderableType] = [Text(self._head, style="bold"), *self._lines]

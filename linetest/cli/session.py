@@ -126,7 +126,8 @@ def station_sheet_path(settings: Settings) -> Path:
     """
     if settings.station_sheet is None:
         raise SettingsError(
-            "no station sheet is set: give --station FILE, or set LINETEST_STATION_SHEET, or station_sheet in the settings"
+            "no station sheet is set: give --station FILE, or set LINETEST_STATION_SHEET, "
+            "or station_sheet in the settings file"
         )
     return settings.station_sheet
 
@@ -149,7 +150,8 @@ def open_session(settings: Settings, say: Say) -> Iterator[Session]:
         RecordError: The database cannot be used.
         SheetError: The station sheet is wrong.
     """
-    sheet = load_station_sheet(station_sheet_path(settings))
+    path = station_sheet_path(settings)
+    sheet = load_station_sheet(path)
     interrupts = Interrupts()
     clock = SystemClock()
     with ExitStack() as stack:
@@ -158,7 +160,7 @@ def open_session(settings: Settings, say: Say) -> Iterator[Session]:
         library = StationLibrary.create()
         interrupts.cancel = library.cancel
         stack.enter_context(interrupts.installed())
-        station = open_station(sheet, library=library, now=clock.now)
+        station = open_station(sheet, library=library, now=clock.now, folder=path.parent)
         stack.callback(station.close)
         stack.callback(station.make_safe)
         _start_safe(station, say)

@@ -39,6 +39,7 @@ def run_shift(
 
     from linetest.cli.screen import Screen
     from linetest.cli.session import open_session
+    from linetest.errors import SerialError
     from linetest.limits import list_sheets
     from linetest.settings import load_settings
 
@@ -58,9 +59,16 @@ def run_shift(
         console.print(CAUTIONS, style="bold", markup=False)
         ended = None
         for scanned in [serial] if serial is not None else _scans(session, console):
-            ended = _one_unit(session, sheets, scanned, lot, operator, screen.show, one_only=serial is not None)
-            screen.close()
-            if as_json and ended is not None:
+            try:
+                ended = test_unit(session, sheets, scanned, lot=lot, operator=operator, show=screen.show)
+            except SerialError as reason:
+                if serial is not None:
+                    raise
+                console.print(str(reason), style="yellow", markup=False)
+                continue
+            finally:
+                screen.close()
+            if as_json:
                 typer.echo(_as_json(scanned, ended))
             if session.interrupts.stop.is_set():
                 break
@@ -107,26 +115,30 @@ def _scans(session: Session, console: Any) -> Iterator[str]:
         yield serial
 
 
-def _one_unit(
-    session: Session,
-    sheets: list[LimitSheet],
-    serial: str,
-    lot: str,
-    operator: str,
-    show: Listener,
-    *,
-    one_only: bool,
-) -> RunEnded | None:
-    from linetest.errors import SerialError
+def test_unit(
+    session: Session, sheets: list[LimitSheet], serial: str, *, lot: str, operator: str, show: Listener
+) -> RunEnded:
+    """Test one unit on an open session.
+
+    Args:
+        session: The session.
+        sheets: The limit sheets known.
+        serial: Serial as scanned.
+        lot: Lot of the unit.
+        operator: Who runs the shift.
+        show: Told of every event once it is kept.
+
+    Returns:
+        How the run ended.
+
+    Raises:
+        SerialError: No model has such serials.
+        CalibrationError: There is no noise calibration in force.
+        RecordError: An event could not be kept.
+    """
     from linetest.procedure import RunOrder, Sequencer, run_unit
 
-    try:
-        sheet = sheet_of(serial, sheets)
-    except SerialError as reason:
-        if one_only:
-            raise
-        typer.echo(str(reason), err=True)
-        return None
+    sheet = sheet_of(serial, sheets)
     calibration, calibration_id = session.calibration()
     sequencer = Sequencer(
         session.station,

@@ -55,5 +55,26 @@ def show_yield(
 
 
 def print_yield(report: YieldReport) -> None:
-    """Print the yield as tables."""
-    raise NotImplementedError
+    """Print the yield as tables.
+
+    Args:
+        report: The report.
+    """
+    from rich.console import Console
+    from rich.table import Table
+    from rich.text import Text
+
+    console = Console(highlight=False)
+    if report.total is None:
+        console.print("no unit has a run that is not VOID yet")
+    table = Table("by", "", "units", "passed", "first-pass yield", "95 % interval", box=None, pad_edge=False)
+    rows = [("all", report.total)] if report.total is not None else []
+    rows += [(kind, row) for kind, group in report.groups.items() for row in group]
+    for kind, row in rows:
+        limits = f"{row.low:.1%} to {row.high:.1%}"
+        table.add_row(kind, Text(row.name), str(row.units), str(row.passed), f"{row.share:.1%}", limits)
+    if rows:
+        console.print(table)
+    for title, causes in (("did not pass", report.rejects), ("VOID runs", report.voids)):
+        for cause, count in causes:
+            console.print(f"{title}: {count} x {cause}", markup=False)

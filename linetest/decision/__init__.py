@@ -8,7 +8,7 @@
 ``intervals``  the interval of a fixed count
 """
 
-from linetest.decision.after import sequential_interval
+from linetest.decision.after import median_unbiased_ber, sequential_interval
 from linetest.decision.design import design_plan, fixed_test_bits, wald_bound
 from linetest.decision.guarded import GuardedPlan, GuardRule, design_guarded_plan
 from linetest.decision.intervals import interval
@@ -25,6 +25,7 @@ __all__ = [
     "design_plan",
     "fixed_test_bits",
     "interval",
+    "median_unbiased_ber",
     "sequential_interval",
     "wald_bound",
 ]

@@ -53,6 +53,31 @@ def sequential_interval(plan: Plan, bits: int, errors: int, confidence: float = 
     return low, _solve(low_tail, tail, rising=False)
 
 
+def median_unbiased_ber(plan: Plan, bits: int, errors: int) -> float:
+    """Bit error rate at which the observed stop is the median of the plan's outcomes.
+
+    Errors by bits is biased after a sequential stop; this lies above the truth as often as below, and always inside
+    :func:`sequential_interval`.
+
+    Args:
+        plan: The plan.
+        bits: Bits at the stop.
+        errors: Errors among them.
+
+    Returns:
+        The estimate; 0 where no error was counted.
+
+    Raises:
+        ParameterError: Counts at which the plan does not stop.
+    """
+    if errors == 0:
+        check_counts(bits, errors)
+        return 0.0
+    # The two sides differ by the probability of the outcome itself; their geometric mean splits it.
+    low, high = sequential_interval(plan, bits, errors, confidence=1e-9)
+    return float(np.sqrt(low * high))
+
+
 def _tails(
     plan: Plan, bits: int, errors: int, *, accepted: bool
 ) -> tuple[Callable[[float], float], Callable[[float], float]]:

@@ -234,7 +234,7 @@ def station_lock(name: str, folder: Path | None = None) -> Iterator[None]:
 
     Args:
         name: Name of the station.
-        folder: Where lock files are; the user's runtime folder where None.
+        folder: Where lock files are; the user's state folder where None.
 
     Yields:
         Nothing.
@@ -244,9 +244,9 @@ def station_lock(name: str, folder: Path | None = None) -> Iterator[None]:
         StationError: The lock file cannot be made.
     """
     if folder is None:
-        from platformdirs import user_runtime_path
+        from platformdirs import user_state_path
 
-        folder = user_runtime_path("linetest", appauthor=False)
+        folder = user_state_path("linetest", appauthor=False)
     path = folder / f"station-{name}.lock"
     try:
         folder.mkdir(parents=True, exist_ok=True)

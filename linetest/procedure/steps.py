@@ -10,8 +10,8 @@ from collections.abc import Generator, Iterator
 from dataclasses import dataclass
 from typing import Any
 
-from linetest.decision import Outcome, Plan, sequential_interval
-from linetest.errors import PlanError, StationError
+from linetest.decision import Outcome, Plan, median_unbiased_ber, sequential_interval
+from linetest.errors import ParameterError, PlanError, StationError
 from linetest.instruments import Counts
 from linetest.limits import BerCheck, Mode, StepLimit, derive_step
 from linetest.noise import CarrierReading, EbN0Setting, set_ebn0
@@ -191,21 +191,21 @@ def _readings(bay: Bay, task: StepTask, setting: EbN0Setting, counts: Counts) ->
         yield bay.reading(check, f"step {step} lost bits", float(counts.lost_bits), "bit")
 
 
-def implementation_loss_db(scheme: str, ebn0_db: float, bits: int, errors: int) -> float | None:
-    """Eb/N0 that the unit needed above theory for the error rate counted, in dB.
+def implementation_loss_db(scheme: str, ebn0_db: float, ber: float) -> float | None:
+    """Eb/N0 that the unit needed above theory for its bit error rate, in dB.
 
     Args:
         scheme: The mode's scheme.
         ebn0_db: Eb/N0 really set, dB.
-        bits: Bits counted.
-        errors: Errors among them.
+        ber: Estimate of the bit error rate.
 
     Returns:
-        The estimate, or None where the counts give no rate that theory can be asked for.
+        The loss, or None where theory cannot be asked for the Eb/N0 of that rate.
     """
-    if errors == 0 or errors / bits >= 0.3:
+    try:
+        return ebn0_db - required_ebn0_db(scheme, ber)
+    except ParameterError:
         return None
-    return ebn0_db - float(required_ebn0_db(scheme, errors / bits))
 
 
 def _facts(
@@ -220,7 +220,8 @@ def _facts(
     # A two-sided interval at 95 % could reach past a limit judged at a risk above 2.5 %.
     level = min(INTERVAL_LEVEL, 1.0 - 2.0 * max(plan.producer_risk, plan.consumer_risk))
     low, high = sequential_interval(plan, counts.bits, counts.errors, confidence=level)
-    loss_db = implementation_loss_db(mode.scheme, setting.ebn0_db, counts.bits, counts.errors)
+    estimate = median_unbiased_ber(plan, counts.bits, counts.errors)
+    loss_db = implementation_loss_db(mode.scheme, setting.ebn0_db, estimate)
     return {
         "nominal_ebn0_db": task.nominal_ebn0_db,
         "ebn0_db": setting.ebn0_db,
@@ -235,6 +236,7 @@ def _facts(
         "errors": counts.errors,
         "lost_bits": counts.lost_bits,
         "ber": counts.errors / counts.bits,
+        "median_unbiased_ber": estimate,
         "interval_low": low,
         "interval_high": high,
         "interval_level": level,
