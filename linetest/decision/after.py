@@ -88,8 +88,11 @@ def _tails(
     def probability(rate: float, *, above: bool) -> float:
         stops = plan.stops() if plan.burst_weights == INDEPENDENT else plan.stops(rate)
         order = _order(stops.bits // plan.look_bits, stops.errors, stops.accepted)
-        member = _at_or_above(order, position) if above else _at_or_above(-order, -position)
-        return float(_chances(plan, stops, rate)[member].sum())
+        chances = _chances(plan, stops, rate)
+        if not above:
+            return float(chances[_at_or_above(-order, -position)].sum())
+        # By the complement: at rates far above, outcomes too unlikely for the pass carry all the weight.
+        return 1.0 - float(chances[~_at_or_above(order, position)].sum())
 
     return lambda rate: probability(rate, above=False), lambda rate: probability(rate, above=True)
 

@@ -6,8 +6,9 @@ HOLD counts as not passed until it is decided. VOID runs say nothing of a unit; 
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import asdict, dataclass
+from datetime import UTC
 from typing import Any
 
 from linetest.decision import interval
@@ -15,7 +16,7 @@ from linetest.records import RunSummary
 
 Key = Callable[[RunSummary], str]
 GROUPS: dict[str, Key] = {
-    "day": lambda run: f"{run.started_at:%Y-%m-%d}",
+    "day": lambda run: f"{run.started_at.astimezone(UTC):%Y-%m-%d}",
     "lot": lambda run: run.lot or "(none)",
     "model": lambda run: run.model,
     "station": lambda run: run.station,
@@ -104,7 +105,7 @@ def _failed(units: Sequence[RunSummary]) -> list[RunSummary]:
     return [run for run in units if run.disposition != "PASS"]
 
 
-def _counted(causes: Any) -> tuple[tuple[str, int], ...]:
+def _counted(causes: Iterable[str]) -> tuple[tuple[str, int], ...]:
     return tuple(sorted(Counter(causes).items(), key=lambda pair: (-pair[1], pair[0])))
 
 

@@ -4,11 +4,11 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from jinja2 import Environment, FileSystemLoader, StrictUndefined
 from markupsafe import Markup
 
-from linetest.charts import CHART_STYLE, yield_chart
-from linetest.charts import YieldRow as Bar
+from linetest.certificates import render_page
+from linetest.charts import YieldRow as ChartRow
+from linetest.charts import bar_chart, yield_chart
 from linetest.trends.first_pass import YieldReport, YieldRow
 
 
@@ -20,19 +20,43 @@ def render_yield_page(report: YieldReport, *, templates_folder: Path) -> str:
         templates_folder: Folder of page templates.
 
     Returns:
-        HTML text.
+        HTML text, one file without script and without outside references.
+
+    Raises:
+        SettingsError: The templates cannot be used.
     """
-    environment = Environment(
-        loader=FileSystemLoader(templates_folder), autoescape=True, undefined=StrictUndefined, trim_blocks=True
-    )
-    charts = {kind: _chart(kind, rows) for kind, rows in report.groups.items() if rows}
-    return (
-        environment.get_template("yield.html").render(report=report, charts=charts, chart_style=Markup(CHART_STYLE))
-        + "\n"
-    )
+    days = report.groups.get("day", ())
+    content = {
+        "report": report,
+        "charts": [(kind, _chart(kind, rows, report.total)) for kind, rows in report.groups.items() if rows],
+        "rejects": _rejects(report),
+        "span": f"{days[0].name} to {days[-1].name}" if days else "",
+    }
+    return render_page("yield.html", templates_folder, content, foot="First-pass yield")
 
 
-def _chart(kind: str, rows: tuple[YieldRow, ...]) -> Markup:
-    bars = [Bar(row.name, row.passed, row.units, row.low, row.high) for row in rows]
-    drawn = yield_chart(bars, title=f"First-pass yield by {kind}", ident=f"yield-{kind}")
+def _chart(kind: str, rows: tuple[YieldRow, ...], total: YieldRow | None) -> Markup:
+    drawn = yield_chart(
+        [_drawn(row) for row in rows],
+        overall=None if total is None else _drawn(total),
+        title=f"First-pass yield by {kind}",
+        ident=f"yield-{kind}",
+    )
+    return Markup(drawn)  # noqa: S704  (our own SVG, every text in it escaped)
+
+
+def _drawn(row: YieldRow) -> ChartRow:
+    return ChartRow(row.name, row.passed, row.units, row.low, row.high)
+
+
+def _rejects(report: YieldReport) -> Markup:
+    """Bars of the causes, most frequent first, each with its count and the share of all up to it."""
+    total = sum(count for _, count in report.rejects)
+    rows, so_far = [], 0
+    for cause, count in report.rejects:
+        so_far += count
+        rows.append((cause or "not stated", float(count), f"{count}, together {100.0 * so_far / total:.0f} %"))
+    if not rows:
+        return Markup("")
+    drawn = bar_chart(rows, title="Units that did not pass at first, by cause", ident="rejects")
     return Markup(drawn)  # noqa: S704  (our own SVG, every text in it escaped)
