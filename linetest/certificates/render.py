@@ -1,23 +1,31 @@
-"""A run's certificate as one self-contained HTML file, made from the record only.
+"""A run's certificate or report as one self-contained HTML file, made from the record only.
 
 No clock, no random number, no network: the same record gives the same bytes.
 """
 
 from __future__ import annotations
 
+import hashlib
 import re
-from datetime import UTC, datetime
 from pathlib import Path
-from typing import Any
 
-from jinja2 import Environment, FileSystemLoader, StrictUndefined
 from markupsafe import Markup
 
-from linetest.charts import CHART_STYLE, BerPoint, ber_chart, ber_range_db, theory_curve
-from linetest.errors import CertificateError
-from linetest.records import JudgementRecord, ReadingRecord, RunRecord
+from linetest.certificates.content import (
+    BerCheck,
+    Step,
+    ber_checks,
+    check_certifiable,
+    check_rows,
+    overall_sentence,
+)
+from linetest.certificates.page import render_page
+from linetest.charts import BerPoint, ber_chart, ber_range_db, theory_curve
+from linetest.errors import CertificateError, ParameterError
+from linetest.records import RunRecord
 
 CERTIFICATE, REPORT = "Certificate of test", "Test report"
+LONGEST_NAME = 64
 
 
 def render_certificate(run: RunRecord, *, templates_folder: Path) -> str:
@@ -28,21 +36,14 @@ def render_certificate(run: RunRecord, *, templates_folder: Path) -> str:
         templates_folder: Folder of page templates.
 
     Returns:
-        HTML text.
+        HTML text, one file without script and without outside references.
 
     Raises:
-        CertificateError: The run did not pass, or its record lacks what a certificate must say.
+        CertificateError: The run did not pass, or its record lacks or contradicts what a certificate must say.
+        SettingsError: The templates cannot be used.
     """
-    if run.disposition != "PASS":
-        raise CertificateError(
-            f"run {run.run_id} of {run.serial} is {run.disposition or 'still open'}: only a PASS is certified"
-        )
-    steps = [judgement for judgement in run.judgements if judgement.step is not None]
-    if not steps or run.calibration is None or not run.instruments:
-        raise CertificateError(
-            f"run {run.run_id} of {run.serial} has no bit error steps, instruments or noise calibration on record"
-        )
-    return _render(run, steps, CERTIFICATE, templates_folder)
+    check_certifiable(run)
+    return _render(run, CERTIFICATE, templates_folder)
 
 
 def render_report(run: RunRecord, *, templates_folder: Path) -> str:
@@ -53,15 +54,15 @@ def render_report(run: RunRecord, *, templates_folder: Path) -> str:
         templates_folder: Folder of page templates.
 
     Returns:
-        HTML text.
+        HTML text, one file without script and without outside references.
 
     Raises:
-        CertificateError: The run is still open.
+        CertificateError: The run is still open, or its record contradicts itself.
+        SettingsError: The templates cannot be used.
     """
     if not run.disposition:
         raise CertificateError(f"run {run.run_id} of {run.serial} is still open: there is nothing to report yet")
-    steps = [j for j in run.judgements if j.step is not None and j.facts]
-    return _render(run, steps, REPORT, templates_folder)
+    return _render(run, REPORT, templates_folder)
 
 
 def certificate_file_name(run: RunRecord) -> str:
@@ -71,55 +72,53 @@ def certificate_file_name(run: RunRecord) -> str:
         run: The run.
 
     Returns:
-        The name.
+        The name; a serial that had to be changed carries a digest, so that two serials never share a name.
     """
-    safe = re.sub(r"[^A-Za-z0-9._-]", "_", run.serial).lstrip(".")
-    return f"{safe}-{re.sub(r'[^A-Za-z0-9-]', '_', run.run_id)}.html"
+    return f"{_safe(run.serial)}-{_safe(run.run_id)}.html"
 
 
-def _render(run: RunRecord, steps: list[JudgementRecord], title: str, templates_folder: Path) -> str:
-    environment = Environment(
-        loader=FileSystemLoader(templates_folder),
-        autoescape=True,
-        undefined=StrictUndefined,
-        trim_blocks=True,
-        lstrip_blocks=True,
-    )
-    environment.filters.update(utc=_utc, rate=_rate, share=_share, grouped=_grouped, number=_number, limits=_limits)
-    css = (templates_folder / "page.css").read_text(encoding="utf-8") + CHART_STYLE
-    factors = {f"{step.facts['k']:.2f}" for step in steps}
-    levels = {f"{step.facts['interval_level'] * 100:g} %" for step in steps}
-    return (
-        environment.get_template("certificate.html").render(
-            title=title,
-            css=Markup(css),  # noqa: S704  (our own style sheet)
-            run=run,
-            steps=steps,
-            k=" / ".join(sorted(factors)),
-            level=" / ".join(sorted(levels)),
-            bursts=any(step.facts["burst_weights"] != [[1, 1.0]] for step in steps),
-            chart=_chart(run, steps) if steps else "",
+def _safe(text: str) -> str:
+    kept = re.sub(r"[^A-Za-z0-9_-]", "_", text)[:LONGEST_NAME]
+    return kept if kept == text and kept else f"{kept}~{hashlib.sha256(text.encode(errors='replace')).hexdigest()[:8]}"
+
+
+def _render(run: RunRecord, title: str, templates_folder: Path) -> str:
+    checks = ber_checks(run)
+    content = {
+        "title": title,
+        "run": run,
+        "conclusion": overall_sentence(run, checks),
+        "checks": [(check, _chart(run, index, check)) for index, check in enumerate(checks, start=1)],
+        "groups": check_rows(run),
+        "one_level": len({check.levels for check in checks}) == 1,
+    }
+    return render_page("certificate.html", templates_folder, content, foot=f"{title}, {run.model} {run.serial}")
+
+
+def _chart(run: RunRecord, index: int, check: BerCheck) -> Markup:
+    facts = check.facts
+    scheme, margin_db = facts["scheme"], float(facts["margin_db"])
+    try:
+        points = [_point(step) for step in check.steps]
+        low_db, high_db = ber_range_db(points)
+        limit_name = f"limit: theory + {margin_db:g} dB"
+        curves = [
+            theory_curve(scheme, low_db, high_db, name=f"theory, {scheme.upper()}"),
+            theory_curve(scheme, low_db, high_db, loss_db=margin_db, kind="limit", name=limit_name),
+        ]
+        drawn = ber_chart(
+            curves,
+            points,
+            title=f"Bit error rate of {run.serial}, {check.name}",
+            ident=f"ber-{index}",
+            interval_level=facts["interval_level"],
         )
-        + "\n"
-    )
+    except ParameterError as reason:
+        raise CertificateError(f"run {run.run_id} of {run.serial}, {check.name} cannot be drawn: {reason}") from reason
+    return Markup(drawn)  # noqa: S704  (our own SVG, every text in it escaped)
 
 
-def _chart(run: RunRecord, steps: list[JudgementRecord]) -> Markup:
-    facts = steps[0].facts
-    scheme, margin_db = str(facts["scheme"]), float(facts["margin_db"])
-    points = [_point(step) for step in steps]
-    low_db, high_db = ber_range_db(points)
-    curves = [
-        theory_curve(scheme, low_db, high_db),
-        theory_curve(
-            scheme, low_db, high_db, loss_db=margin_db, kind="limit", name=f"limit: theory + {margin_db:g} dB"
-        ),
-    ]
-    title = f"Bit error rate of {run.serial}"
-    return Markup(ber_chart(curves, points, title=title, interval_level=facts["interval_level"]))  # noqa: S704  (our own SVG, every text in it escaped)
-
-
-def _point(step: JudgementRecord) -> BerPoint:
+def _point(step: Step) -> BerPoint:
     facts = step.facts
     return BerPoint(
         ebn0_db=facts["ebn0_db"],
@@ -128,40 +127,7 @@ def _point(step: JudgementRecord) -> BerPoint:
         low=facts["interval_low"],
         high=facts["interval_high"],
         expanded_u_db=facts["expanded_u_db"],
-        name=str(step.step),
+        name=str(step.number),
         judgement=step.judgement,
         guarded_limit_ber=facts["guarded_limit_ber"],
-        estimate=facts["median_unbiased_ber"],
     )
-
-
-def _utc(at: datetime) -> str:
-    return f"{at.astimezone(UTC):%Y-%m-%d %H:%M:%S} UTC"
-
-
-def _rate(value: float) -> str:
-    return "0" if value == 0.0 else f"{value:.2e}"
-
-
-def _share(value: float) -> str:
-    return f"{value * 100:.2f} %"
-
-
-def _grouped(value: int) -> str:
-    return f"{value:,}".replace(",", "\u202f")
-
-
-def _number(value: Any) -> str:
-    if isinstance(value, str):
-        return value
-    if float(value).is_integer() and abs(value) >= 1000:
-        return _grouped(int(value))
-    return f"{value:.4g}" if abs(value) < 1000 else f"{value:.1f}"
-
-
-def _limits(reading: ReadingRecord) -> str:
-    low = "" if reading.lower is None else f"{reading.lower:g}"
-    high = "" if reading.upper is None else f"{reading.upper:g}"
-    if low and high:
-        return f"{low} … {high}"
-    return f"≥ {low}" if low else f"≤ {high}" if high else "–"

@@ -7,11 +7,13 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Literal
 
+import numpy as np
+
 from linetest.charts.frame import across, down, label, path, sheet
 from linetest.charts.scales import DecadeScale, LinearScale, decades_around
 from linetest.charts.text import escaped, number, plain_scientific, power_of_ten, shortened
 from linetest.errors import ParameterError
-from linetest.theory import bit_error_rate
+from linetest.theory import SCHEMES, bit_error_rate
 
 WIDTH, HEIGHT = 680.0, 356.0
 LEFT, RIGHT, TOP, BOTTOM = 56.0, 660.0, 12.0, 314.0
@@ -97,19 +99,38 @@ def theory_curve(
         name: Written beside it; the scheme and the loss by default.
 
     Returns:
-        The curve.
+        The curve, without the places that theory does not reach.
+
+    Raises:
+        ParameterError: The scheme is unknown.
     """
     step_db = (ebn0_high_db - ebn0_low_db) / (CURVE_POINTS - 1)
     grid = [ebn0_low_db + step_db * index for index in range(CURVE_POINTS)]
-    rates = _rates(scheme, tuple(round(point - loss_db, 6) for point in grid))
+    rates = _known_rates(scheme, [round(point - loss_db, 6) for point in grid])
+    known = [(place, rate) for place, rate in zip(grid, rates, strict=True) if rate is not None]
     shift = f" + {loss_db:g} dB" if loss_db else ""
-    return BerCurve(kind, name or f"theory {scheme.upper()}{shift}", grid, rates)
+    return BerCurve(
+        kind,
+        name or f"theory {scheme.upper()}{shift}",
+        [place for place, _ in known],
+        [rate for _, rate in known],
+    )
 
 
-def _rates(scheme: str, ebn0_db: tuple[float, ...]) -> list[float]:
-    import numpy as np
-
-    return [float(rate) for rate in bit_error_rate(scheme, np.asarray(ebn0_db, dtype=np.float64))]
+def _known_rates(scheme: str, levels_db: Sequence[float]) -> list[float | None]:
+    """Theory at each level; None where the scheme's theory does not reach."""
+    try:
+        return [float(rate) for rate in bit_error_rate(scheme, np.asarray(levels_db, dtype=np.float64))]
+    except ParameterError:
+        if scheme not in SCHEMES:
+            raise
+    rates: list[float | None] = []
+    for level_db in levels_db:
+        try:
+            rates.append(bit_error_rate(scheme, float(level_db)))
+        except ParameterError:
+            rates.append(None)
+    return rates
 
 
 def ber_range_db(points: Sequence[BerPoint]) -> tuple[float, float]:
@@ -151,6 +172,7 @@ def ber_chart(
     Raises:
         ParameterError: There is nothing to draw.
     """
+    curves = [curve for curve in curves if curve.ber]
     x, y = _axes(curves, points)
     parts = [_grid(x, y), f'<clipPath id="{ident}-c"><path d="{_box()}"/></clipPath><g clip-path="url(#{ident}-c)">']
     parts += [_drawn_curve(curve, x, y) for curve in curves]
@@ -182,8 +204,8 @@ def _axes(curves: Sequence[BerCurve], points: Sequence[BerPoint]) -> tuple[Linea
             if any(abs(place - point.ebn0_db) < 0.3 for point in points)
         ]
     else:
-        low_db = min(curve.ebn0_db[0] for curve in curves)
-        high_db = max(curve.ebn0_db[-1] for curve in curves)
+        low_db = min(place for curve in curves for place in curve.ebn0_db)
+        high_db = max(place for curve in curves for place in curve.ebn0_db)
         rates, inside = [], [rate for curve in curves for rate in curve.ber]
     return LinearScale(low_db, high_db, LEFT, RIGHT), decades_around(rates + inside, BOTTOM, TOP, lowest=-12)
 
