@@ -2,14 +2,12 @@
 
 The map, in the order data takes:
 
-- `bookkeeping`: information bits per symbol; whether stated rates agree with modulation and coding
 - `sheet`: what a sheet holds, frozen, each number with its source
 - `crossrules`: rules between tables: names that must meet, curves that must carry the limits
 - `load`: files to sheets, all faults at once
 - `derive`: from sheet, Eb/N0 and its uncertainty to limit, guard bands and plan
 """
 
-from linetest.limits.bookkeeping import bookkeeping_error_db, code_rate, information_bits_per_symbol
 from linetest.limits.derive import StepLimit, derive_step, limit_curve
 from linetest.limits.load import list_sheets, load_model, load_sheet
 from linetest.limits.sheet import (
@@ -31,10 +29,7 @@ __all__ = [
     "Procedure",
     "StepLimit",
     "SupplyLimits",
-    "bookkeeping_error_db",
-    "code_rate",
     "derive_step",
-    "information_bits_per_symbol",
     "limit_curve",
     "list_sheets",
     "load_model",

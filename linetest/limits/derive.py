@@ -18,7 +18,7 @@ import numpy as np
 from linetest.decision import GuardedPlan, design_guarded_plan, fixed_test_bits
 from linetest.errors import ParameterError, PlanError
 from linetest.limits.sheet import BerCheck, LimitSheet, Mode
-from linetest.theory import bit_error_rate, trusted_ber_range, union_bound
+from linetest.theory import bit_error_rate, curve_uncertainty_db, required_ebn0_db, trusted_ber_range
 from linetest.units import FloatArray
 
 # A look no finer than this share of the best fixed test costs less than 1 % in mean bits.
@@ -76,7 +76,9 @@ class StepLimit:
         bit_rate_bps: Information bit rate, bit/s.
         nominal_ebn0_db: Eb/N0 that the sheet asks for, dB.
         ebn0_db: Eb/N0 really set, dB.
-        u_db: Its standard uncertainty, dB. The plan holds for `guarded.u_db`, the same or a little more.
+        u_db: Its standard uncertainty, dB.
+        curve_u_db: Standard uncertainty of the curve itself at the limit, as a shift along Eb/N0, dB; 0 for closed
+            forms. The plan holds for both together, rounded up: `guarded.u_db`.
         margin_db: Implementation loss a unit must not exceed, dB.
         design_loss_db: Implementation loss of a good unit, dB.
         theory_ber: The scheme's bit error rate at `ebn0_db`.
@@ -94,6 +96,7 @@ class StepLimit:
     nominal_ebn0_db: float
     ebn0_db: float
     u_db: float
+    curve_u_db: float
     margin_db: float
     design_loss_db: float
     theory_ber: float
@@ -115,6 +118,7 @@ class StepLimit:
             "nominal_ebn0_db": self.nominal_ebn0_db,
             "ebn0_db": self.ebn0_db,
             "u_db": self.u_db,
+            "curve_u_db": self.curve_u_db,
             "planned_u_db": guarded.u_db,
             "theory_ber": self.theory_ber,
             "margin_db": self.margin_db,
@@ -141,8 +145,8 @@ class StepLimit:
 def limit_curve(scheme: str) -> Callable[[FloatArray], FloatArray]:
     """Curve for averaging over the error of Eb/N0: theory, also a little outside its trusted region.
 
-    A coded scheme's bound runs on where it is no longer trusted to carry a limit: there it only weighs
-    errors of Eb/N0 of several standard uncertainties, at which the unit is rejected anyway.
+    Where nothing is known of a coded scheme, the worst rate known stands in: it only weighs errors of Eb/N0 of
+    many standard uncertainties, at which the unit is rejected anyway.
 
     Args:
         scheme: Modulation and coding.
@@ -150,9 +154,13 @@ def limit_curve(scheme: str) -> Callable[[FloatArray], FloatArray]:
     Returns:
         Function from Eb/N0 in dB to bit error rate, arrays of any shape.
     """
-    if trusted_ber_range(scheme)[1] >= 0.5:
-        return lambda ebn0_db: bit_error_rate(scheme, np.asarray(ebn0_db, dtype=np.float64))
-    return lambda ebn0_db: np.minimum(union_bound(scheme, np.asarray(ebn0_db, dtype=np.float64)), 0.5)
+    greatest = trusted_ber_range(scheme)[1]
+    least_db = -math.inf if greatest >= 0.5 else required_ebn0_db(scheme, greatest)
+
+    def curve(ebn0_db: FloatArray) -> FloatArray:
+        return bit_error_rate(scheme, np.maximum(np.asarray(ebn0_db, dtype=np.float64), least_db))
+
+    return curve
 
 
 def derive_step(
@@ -194,9 +202,10 @@ def derive_step(
         nominal_ebn0_db=nominal_ebn0_db,
         ebn0_db=ebn0_db,
         u_db=u_db,
+        curve_u_db=curve_u_db(check, mode, ebn0_db),
         margin_db=check.margin_db,
         design_loss_db=check.design_loss_db,
-        theory_ber=float(limit_curve(mode.scheme)(np.array(ebn0_db))),
+        theory_ber=bit_error_rate(mode.scheme, ebn0_db),
         limit_ber=bit_error_rate(mode.scheme, ebn0_db - check.margin_db),
         design_ber=bit_error_rate(mode.scheme, ebn0_db - check.design_loss_db),
         best_fixed_bits=best_fixed_bits,
@@ -238,20 +247,21 @@ def plan_request(check: BerCheck, mode: Mode, *, ebn0_db: float, u_db: float, sh
         check: The BER check.
         mode: Its mode.
         ebn0_db: Eb/N0 really set, dB.
-        u_db: Its standard uncertainty, dB; planned for the next multiple of `PLANNED_U_STEP_DB` above, but
-            for no more than the check carries.
+        u_db: Its standard uncertainty, dB. Planned for, together with the curve's own, is the next multiple of
+            `PLANNED_U_STEP_DB` above, but not for more than the check carries unless there is more.
         shortest_gate_s: Shortest gate of the error counter, s.
 
     Returns:
         The request, equal for equal content.
     """
-    planned_u_db = round(math.ceil(round(u_db / PLANNED_U_STEP_DB, 6)) * PLANNED_U_STEP_DB, 6)
+    both_db = math.hypot(u_db, curve_u_db(check, mode, ebn0_db))
+    planned_u_db = round(math.ceil(round(both_db / PLANNED_U_STEP_DB, 6)) * PLANNED_U_STEP_DB, 6)
     return PlanRequest(
         scheme=mode.scheme,
         burst_weights=mode.burst_weights,
         bit_rate_bps=mode.bit_rate_bps,
         ebn0_db=ebn0_db,
-        u_db=max(u_db, min(planned_u_db, check.max_u_db)),
+        u_db=max(both_db, min(planned_u_db, check.max_u_db)),
         margin_db=check.margin_db,
         design_loss_db=check.design_loss_db,
         producer_risk=check.step_producer_risk,
@@ -261,6 +271,20 @@ def plan_request(check: BerCheck, mode: Mode, *, ebn0_db: float, u_db: float, sh
         max_fixed_tests=check.max_fixed_tests,
         shortest_gate_s=shortest_gate_s,
     )
+
+
+def curve_u_db(check: BerCheck, mode: Mode, ebn0_db: float) -> float:
+    """Standard uncertainty of the curve at a step's limit; it moves the limit as an error of Eb/N0 does.
+
+    Args:
+        check: The BER check.
+        mode: Its mode.
+        ebn0_db: Eb/N0 really set, dB.
+
+    Returns:
+        Standard uncertainty as a shift along Eb/N0, dB.
+    """
+    return curve_uncertainty_db(mode.scheme, ebn0_db - check.margin_db)
 
 
 @lru_cache(maxsize=4096)

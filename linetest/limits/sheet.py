@@ -8,12 +8,12 @@ from collections.abc import Mapping
 from itertools import pairwise
 from typing import Annotated, ClassVar, Literal
 
-from pydantic import BaseModel, ConfigDict, Field, ValidationInfo, field_validator
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field, ValidationInfo, field_validator
 
 from linetest.errors import ParameterError
-from linetest.limits.bookkeeping import ESN0_AGREEMENT_DB, bookkeeping_error_db
 from linetest.patterns import PATTERNS
-from linetest.theory import SCHEMES
+from linetest.theory import SCHEMES, scheme_rates
+from linetest.units import esn0_db
 
 Number = Annotated[float, Field(allow_inf_nan=False)]
 Positive = Annotated[float, Field(gt=0, allow_inf_nan=False)]
@@ -22,8 +22,24 @@ Risk = Annotated[float, Field(gt=0, lt=0.5, allow_inf_nan=False)]
 Name = Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9 ._/-]{0,39}$")]
 BurstWeights = tuple[tuple[int, float], ...]
 
-# What no serial may look like: it is printed, put into file names and said to instruments.
-HOSTILE_SERIALS = ("", " ", "../up", "a/b", "a\\b", "<b>", 'a"b', "a&b", "a\nb", "a b", "%2e", "a;b", "é")
+# Rates may be rounded to the bit, not to the percent.
+ESN0_AGREEMENT_DB = 0.001
+
+# Serials become file names, printed text and words to instruments, so a pattern may be built of these only: letters,
+# digits, - and _; classes of them; counts; groups; alternatives. No pattern of these matches a path or markup.
+_SERIAL_PATTERN = re.compile(
+    r"(?:[A-Za-z0-9_-]|\[(?:[0-9]-[0-9]|[A-Z]-[A-Z]|[a-z]-[a-z]|[A-Za-z0-9_])+\]|\{[0-9]+(?:,[0-9]+)?\}|\(\?:|[()|?])+"
+)
+
+
+def _not_empty(entries: tuple[object, ...]) -> tuple[object, ...]:
+    if not entries:
+        raise ValueError("must have at least one entry")
+    return entries
+
+
+# Not a length on the field: that would call a list empty whose only entry is wrong.
+NOT_EMPTY = AfterValidator(_not_empty)
 
 
 class Strict(BaseModel):
@@ -99,7 +115,7 @@ class Mode(Sourced):
         scheme, bit_rate_bps = info.data.get("scheme"), info.data.get("bit_rate_bps")
         if scheme is None or bit_rate_bps is None:
             return symbol_rate_bd
-        error_db = bookkeeping_error_db(scheme, bit_rate_bps, symbol_rate_bd)
+        error_db = esn0_db(0.0, bit_rate_bps, symbol_rate_bd) - scheme_rates(scheme).esn0_db(0.0)
         if abs(error_db) > ESN0_AGREEMENT_DB:
             raise ValueError(
                 f"must carry {bit_rate_bps:g} bit/s with {scheme}: Es/N0 - Eb/N0 is {error_db:+.3f} dB off what "
@@ -219,7 +235,7 @@ class BerCheck(Sourced):
 
     name: Name
     mode: str
-    steps: Annotated[tuple[Number, ...], Field(strict=False, min_length=1)]
+    steps: Annotated[tuple[Number, ...], Field(strict=False), NOT_EMPTY]
     setting_rule: Literal["nearest", "from-below", "from-above"]
     tolerance_db: Positive
     margin_db: Positive
@@ -268,7 +284,7 @@ class Procedure(Strict):
     supply: SupplyLimits
     carrier: CarrierLimits
     lock: LockLimits
-    ber: Annotated[tuple[BerCheck, ...], Field(strict=False, min_length=1)]
+    ber: Annotated[tuple[BerCheck, ...], Field(strict=False), NOT_EMPTY]
 
 
 class LimitSheet(Sourced):
@@ -291,21 +307,25 @@ class LimitSheet(Sourced):
     title: Annotated[str, Field(min_length=1, max_length=120)]
     revision: Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9._-]{0,15}$")]
     serial_pattern: str
-    firmware: Annotated[tuple[Annotated[str, Field(min_length=1)], ...], Field(strict=False, min_length=1)]
-    modes: Annotated[tuple[Mode, ...], Field(alias="mode", strict=False, min_length=1)]
+    firmware: Annotated[tuple[Annotated[str, Field(min_length=1)], ...], Field(strict=False), NOT_EMPTY]
+    modes: Annotated[tuple[Mode, ...], Field(alias="mode", strict=False), NOT_EMPTY]
     procedure: Procedure
     digest: Annotated[str, Field(pattern=r"^[0-9a-f]{64}$")]
 
     @field_validator("serial_pattern")
     @classmethod
     def _narrow(cls, serial_pattern: str) -> str:
+        if not _SERIAL_PATTERN.fullmatch(serial_pattern):
+            raise ValueError(
+                "must be built of letters, digits, - and _, classes of them such as [0-9], counts such as {6}, groups "
+                "and |: serials become file names and printed text"
+            )
         try:
             compiled = re.compile(serial_pattern)
         except re.error as reason:
             raise ValueError(f"must be a regular expression: {reason}") from None
-        for serial in HOSTILE_SERIALS:
-            if compiled.fullmatch(serial):
-                raise ValueError(f"must not match {serial!r}: serials become file names and printed text")
+        if compiled.fullmatch(""):
+            raise ValueError("must not match an empty serial")
         return serial_pattern
 
     def mode(self, name: str) -> Mode:
