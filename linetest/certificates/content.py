@@ -12,10 +12,10 @@ from linetest.errors import CertificateError
 from linetest.records import InstrumentRecord, JudgementRecord, ReadingRecord, RunRecord
 
 GUARD_WORDS = {
-    "least": "least that keeps both risks",
-    "U": "w = U",
-    "0.83U": "w = 0.83 U",
-    "none": "none",
+    "least": "least: the smallest w for which both risks, with u included, meet the limit sheet",
+    "U": "U: w equals the expanded uncertainty",
+    "0.83U": "0.83U: w is 0.83 of the expanded uncertainty",
+    "none": "none: the limit is not guarded",
 }
 _NUMBERS = (
     "ebn0_db",
@@ -57,12 +57,6 @@ class Step:
     number: int
     judgement: str
     facts: dict[str, Any]
-
-    @property
-    def guard(self) -> str:
-        """The guard band rule in words."""
-        rule = str(self.facts["guard_rule"])
-        return GUARD_WORDS.get(rule, rule)
 
 
 @dataclass(frozen=True, slots=True)
@@ -267,6 +261,19 @@ def _row(reading: ReadingRecord) -> Row:
 
 def _joined(texts: Any) -> str:
     return " / ".join(dict.fromkeys(texts))
+
+
+def guard_rules(checks: Sequence[BerCheck]) -> str:
+    """The guard band rules used, in words.
+
+    Args:
+        checks: Bit error checks of a run.
+
+    Returns:
+        Each rule once.
+    """
+    rules = dict.fromkeys(str(step.facts["guard_rule"]) for check in checks for step in check.steps)
+    return "; ".join(GUARD_WORDS.get(rule, rule) for rule in rules)
 
 
 def overall_sentence(run: RunRecord, checks: Sequence[BerCheck]) -> str:

@@ -17,6 +17,7 @@ from linetest.certificates.content import (
     ber_checks,
     check_certifiable,
     check_rows,
+    guard_rules,
     overall_sentence,
 )
 from linetest.certificates.page import render_page
@@ -90,7 +91,7 @@ def _render(run: RunRecord, title: str, templates_folder: Path) -> str:
         "conclusion": overall_sentence(run, checks),
         "checks": [(check, _chart(run, index, check)) for index, check in enumerate(checks, start=1)],
         "groups": check_rows(run),
-        "one_level": len({check.levels for check in checks}) == 1,
+        "rules": guard_rules(checks),
     }
     return render_page("certificate.html", templates_folder, content, foot=f"{title}, {run.model} {run.serial}")
 
@@ -130,4 +131,5 @@ def _point(step: Step) -> BerPoint:
         name=str(step.number),
         judgement=step.judgement,
         guarded_limit_ber=facts["guarded_limit_ber"],
+        estimate=facts["ber"],
     )

@@ -84,7 +84,7 @@ def uncertainty_places(standard_uncertainty: float) -> int:
 
 
 def measured(value: float | str, standard_uncertainty: float | None = None) -> str:
-    """A reading's value, rounded to the place of its uncertainty where it has one, else to four digits.
+    """A reading's value, rounded to the place of its uncertainty; without one, four digits, three decimals at most.
 
     Args:
         value: The value; text passes unchanged.
@@ -101,6 +101,8 @@ def measured(value: float | str, standard_uncertainty: float | None = None) -> s
         return decimals(value, uncertainty_places(standard_uncertainty))
     if value.is_integer() and abs(value) >= 1000:
         return grouped(int(value))
+    if 0.001 <= abs(value) < 10_000.0:
+        return decimals(value, min(3, max(0, 3 - math.floor(math.log10(abs(value))))))
     return f"{value:.4g}".replace("-", MINUS)
 
 

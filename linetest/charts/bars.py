@@ -11,7 +11,7 @@ from linetest.charts.scales import LinearScale
 from linetest.charts.text import escaped, number, shortened
 from linetest.errors import ParameterError
 
-WIDTH, LEFT, RIGHT = 680.0, 214.0, 588.0
+WIDTH, LEFT, RIGHT = 680.0, 214.0, 556.0
 ROW, TOP = 21.0, 8.0
 
 
