@@ -14,6 +14,8 @@ Pure: arrays in, arrays out. The map, in the order data takes:
 - `schemes`: modulation and codes by name
 - `curves`: the public questions
 - `rates`: information bits, channel bits, symbols
+- `symbols`, `waveform`: Gray maps; pulses, I and Q, matched filter
+- `impairments`, `interference`, `impaired`: what a real modem adds, its neighbours' share, and the rates
 """
 
 from linetest.theory.curves import (
@@ -24,14 +26,20 @@ from linetest.theory.curves import (
     trusted_ber_range,
     union_bound,
 )
+from linetest.theory.impaired import IMPAIRED_SCHEMES, impaired_bit_error_rate, impaired_ebn0_db
+from linetest.theory.impairments import Impairments
 from linetest.theory.rates import SchemeRates, scheme_rates
 from linetest.theory.schemes import SCHEMES
 
 __all__ = [
+    "IMPAIRED_SCHEMES",
     "SCHEMES",
+    "Impairments",
     "SchemeRates",
     "bit_error_rate",
     "curve_uncertainty_db",
+    "impaired_bit_error_rate",
+    "impaired_ebn0_db",
     "required_ebn0_db",
     "scheme_rates",
     "symbol_error_rate",
