@@ -43,12 +43,12 @@ def render_page(template: str, templates_folder: Path, content: Mapping[str, Any
         policy = f"default-src 'none'; style-src 'sha256-{digest}'; base-uri 'none'; form-action 'none'"
         css_markup = Markup(css)  # noqa: S704  (our own style sheet; the foot is escaped for CSS)
         return environment.get_template(template).render(css=css_markup, policy=policy, **content) + "\n"
-    except (OSError, UnicodeDecodeError) as reason:
-        raise SettingsError(f"the page templates in {templates_folder} cannot be read: {reason}") from reason
     except TemplateError as reason:
         raise SettingsError(
             f"the page template {template} in {templates_folder} cannot be used: {type(reason).__name__}: {reason}"
         ) from reason
+    except (OSError, UnicodeDecodeError) as reason:
+        raise SettingsError(f"the page templates in {templates_folder} cannot be read: {reason}") from reason
 
 
 @lru_cache(maxsize=4)
