@@ -4,6 +4,8 @@ The map, in the order data takes:
 
 - `budget`: quantities, models, and what they make of a result's uncertainty (GUM)
 - `montecarlo`: the same by propagation of distributions (JCGM 101)
+- `conformity`: guard bands, specific and global risks (JCGM 106)
+- `bandwidth`: noise-equivalent bandwidth from a swept response
 - `model`: the measurement's model, from meter readings to Eb/N0
 - `station`: what is needed of a station
 - `calibration`: a noise calibration as a value; whether it holds now
@@ -12,8 +14,10 @@ The map, in the order data takes:
 - `setting`: the attenuator setting of a step and the Eb/N0 that is really there
 """
 
+from linetest.noise.bandwidth import SweptResponse, noise_bandwidth
 from linetest.noise.budget import Budget, Contribution, Quantity, covariance, coverage_factor, evaluate
 from linetest.noise.calibration import CalibratedWith, NoiseCalibration, check_current
+from linetest.noise.conformity import GlobalRisks, acceptance_limit_for, global_risks, guard_band, specific_risk
 from linetest.noise.measure import CalibrationProgress, CarrierReading, calibrate_noise, read_carrier
 from linetest.noise.montecarlo import MonteCarloResult, propagate
 from linetest.noise.setting import (
@@ -32,10 +36,13 @@ __all__ = [
     "CarrierReading",
     "Contribution",
     "EbN0Setting",
+    "GlobalRisks",
     "MonteCarloResult",
     "NoiseCalibration",
     "NoiseStation",
     "Quantity",
+    "SweptResponse",
+    "acceptance_limit_for",
     "calibrate_noise",
     "check_current",
     "covariance",
@@ -43,8 +50,12 @@ __all__ = [
     "ebn0_budget",
     "ebn0_monte_carlo",
     "evaluate",
+    "global_risks",
+    "guard_band",
+    "noise_bandwidth",
     "propagate",
     "read_carrier",
     "set_ebn0",
+    "specific_risk",
     "step_covariance_db2",
 ]

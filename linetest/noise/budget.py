@@ -257,12 +257,6 @@ def evaluate(
     numbers = _uncertain_numbers(quantities, correlations or {})
     result = model(numbers) + GTC.constant(0.0)
     dof = float(GTC.dof(result)) if GTC.uncertainty(result) > 0.0 else math.inf
-    if math.isnan(dof):
-        raise ParameterError(
-            "correlations",
-            dict(correlations or {}),
-            "join inputs with infinite, or with the same and jointly observed, degrees of freedom",
-        )
     return Budget(
         value=float(GTC.value(result)),
         u=float(GTC.uncertainty(result)),
@@ -304,6 +298,13 @@ def _check(quantities: Sequence[Quantity], correlations: Correlations) -> None:
             raise ParameterError("correlations", pair, "name two different quantities")
         if not -1.0 <= coefficient <= 1.0:
             raise ParameterError("correlations", coefficient, "lie between -1 and +1")
+        first, second = (quantities[names.index(name)].dof for name in pair)
+        if first != second:
+            raise ParameterError(
+                "correlations",
+                pair,
+                "join inputs with infinite, or with the same and jointly observed, degrees of freedom",
+            )
 
 
 def _uncertain_numbers(quantities: Sequence[Quantity], correlations: Correlations) -> dict[str, Value]:
