@@ -5,7 +5,7 @@ compares received bytes with them. Bits are packed eight to a byte, the first in
 """
 
 from linetest.patterns.count import PackedBits, count_errors
-from linetest.patterns.generate import ByteArray, prbs_bytes
+from linetest.patterns.generate import ByteArray, PatternStream, prbs_bytes
 from linetest.patterns.registers import PATTERNS, Pattern
 
-__all__ = ["PATTERNS", "ByteArray", "PackedBits", "Pattern", "count_errors", "prbs_bytes"]
+__all__ = ["PATTERNS", "ByteArray", "PackedBits", "Pattern", "PatternStream", "count_errors", "prbs_bytes"]

@@ -171,3 +171,66 @@ def _reduced(value: int, modulus: int, stages: int) -> int:
     while (excess := value.bit_length() - stages - 1) >= 0:
         value ^= modulus << excess
     return value
+
+
+class PatternStream:
+    """A pattern in chunks of one size, each made from the one before in the same memory.
+
+    Attributes:
+        chunk: The current chunk; its bytes change with every `advance`.
+    """
+
+    def __init__(self, name: str, chunk_bytes: int, start: int = 0, *, inverted: bool | None = None) -> None:
+        """Prepares the first chunk.
+
+        Args:
+            name: One of `PATTERNS`.
+            chunk_bytes: Bytes of a chunk, a multiple of 8.
+            start: Position of the first bit in the pattern, in bits.
+            inverted: Polarity, as in `prbs_bytes`.
+
+        Raises:
+            ParameterError: The name is unknown, or the chunk is no multiple of 8 bytes.
+        """
+        pattern = find_pattern(name)
+        if chunk_bytes <= 0 or chunk_bytes % 8:
+            raise ParameterError("chunk_bytes", chunk_bytes, "be a multiple of 8 above 0")
+        self._pattern, self._start = pattern, whole_number("start", start, "be a whole number of bits")
+        self._inverted = pattern.inverted if inverted is None else inverted
+        # A bytearray, because comparing one with an array is a plain memory comparison without a copy.
+        self.chunk = bytearray(chunk_bytes)
+        self._words = np.frombuffer(self.chunk, dtype=np.uint64)
+        self._bytes = np.frombuffer(self.chunk, dtype=np.uint8)
+        self._far, self._near = pattern.stages, pattern.tap
+        while 2 * self._near <= _MOST_BLOCK_WORDS and 4 * self._far <= self._words.size:
+            self._far, self._near = 2 * self._far, 2 * self._near
+        self._jump()
+
+    def advance(self) -> None:
+        """Replaces the chunk by the next one."""
+        self._start += 8 * len(self.chunk)
+        if self._pattern.zero_suppressed or 2 * self._far > self._words.size:
+            self._jump()
+            return
+        done = 0
+        while done < self._far:
+            block = min(self._near, self._far - done)
+            far_back = self._words[done - self._far :][:block]
+            near_back = self._words[done - self._near :][:block]
+            self._sum(far_back, near_back, self._words[done : done + block])
+            done += block
+        while done < self._words.size:
+            block = min(self._near, self._words.size - done)
+            far_back = self._words[done - self._far : done - self._far + block]
+            near_back = self._words[done - self._near : done - self._near + block]
+            self._sum(far_back, near_back, self._words[done : done + block])
+            done += block
+
+    def _sum(self, one: _WordArray, other: _WordArray, out: _WordArray) -> None:
+        np.bitwise_xor(one, other, out=out)
+        if self._inverted:
+            # The sum of two inverted bits is the bit that is not inverted.
+            np.invert(out, out=out)
+
+    def _jump(self) -> None:
+        self._bytes[:] = prbs_bytes(self._pattern.name, len(self.chunk), self._start, inverted=self._inverted)

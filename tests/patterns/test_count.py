@@ -57,9 +57,7 @@ def test_nothing_received_has_no_errors() -> None:
 
 
 def test_wrong_arguments_are_named() -> None:
-    with pytest.raises(
-        ParameterError, match=r"reference is '2 bytes', but must be as long as received: 3 bytes"
-    ):
+    with pytest.raises(ParameterError, match=r"reference is '2 bytes', but must be as long as received: 3 bytes"):
         count_errors(b"abc", b"ab")
     with pytest.raises(ParameterError, match=r"name is 'prbs8', but must be one of"):
         count_errors(b"abc", "prbs8")
@@ -69,3 +67,15 @@ def test_wrong_arguments_are_named() -> None:
         count_errors(np.zeros(3), "prbs9")  # type: ignore[arg-type]  # the wrong type is the point
     with pytest.raises(ParameterError, match=r"received is 'list', but must be packed bytes"):
         count_errors([1, 2], "prbs9")  # type: ignore[arg-type]  # the wrong type is the point
+
+
+@pytest.mark.parametrize("per_chunk", [0.0, 0.3, 1.0, 20.0])
+def test_density_of_errors_does_not_change_the_count(per_chunk: float) -> None:
+    """Looking first for any difference, or not, is a matter of speed only."""
+    size = 60 * 65_536 + 1001
+    rng = np.random.default_rng(5)
+    positions = rng.choice(8 * size, int(60 * per_chunk), replace=False)
+    received = prbs_bytes("prbs31", size)
+    np.bitwise_xor.at(received, positions // 8, (0x80 >> positions % 8).astype(np.uint8))
+    assert count_errors(received, "prbs31") == positions.size
+    assert count_errors(received, prbs_bytes("prbs31", size)) == positions.size

@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 from scipy.signal import max_len_seq
 
 from linetest.errors import ParameterError
-from linetest.patterns import PATTERNS, ByteArray, Pattern, prbs_bytes
+from linetest.patterns import PATTERNS, ByteArray, Pattern, PatternStream, prbs_bytes
 
 # First bytes, most significant bit first, register all ONE, inverted where O.150 asks for it.
 PUBLISHED = {
@@ -100,9 +100,7 @@ def test_equals_a_general_library_read_backwards(name: str) -> None:
     """The library's default taps are of the reciprocal polynomial: its sequence is ours reversed in time."""
     pattern = PATTERNS[name]
     theirs, _ = max_len_seq(pattern.stages)
-    ours = np.unpackbits(prbs_bytes(name, -(-pattern.period_bits // 8), inverted=False))[
-        : pattern.period_bits
-    ]
+    ours = np.unpackbits(prbs_bytes(name, -(-pattern.period_bits // 8), inverted=False))[: pattern.period_bits]
     backwards = theirs[::-1].astype(np.uint8)
     # Both start anywhere in the cycle: line them up at the only run of `stages` ONEs.
     doubled = np.concatenate([backwards, backwards])
@@ -173,3 +171,24 @@ def test_answers_do_not_share_memory() -> None:
 def test_wrong_arguments_are_named(name: str, count: int, start: int, sentence: str) -> None:
     with pytest.raises(ParameterError, match=sentence):
         prbs_bytes(name, count, start)
+
+
+@given(
+    name=st.sampled_from(sorted(PATTERNS)),
+    start=st.integers(0, 10**9),
+    words=st.integers(1, 3000),
+    inverted=st.sampled_from([None, False, True]),
+)
+@settings(max_examples=60, deadline=None)
+def test_chunks_follow_one_another(name: str, start: int, words: int, inverted: bool | None) -> None:
+    """Chunks made from the one before equal one long answer, whatever the chunk's size."""
+    stream = PatternStream(name, 8 * words, start, inverted=inverted)
+    whole = prbs_bytes(name, 4 * 8 * words, start, inverted=inverted).tobytes()
+    for turn in range(4):
+        assert bytes(stream.chunk) == whole[turn * 8 * words : (turn + 1) * 8 * words]
+        stream.advance()
+
+
+def test_a_chunk_of_odd_size_is_refused() -> None:
+    with pytest.raises(ParameterError, match=r"chunk_bytes is 12, but must be a multiple of 8 above 0"):
+        PatternStream("prbs9", 12)
