@@ -63,13 +63,19 @@ class Browser:
         """Open a page from a file, as a customer does."""
         path = folder / "page.html"
         path.write_text(page, encoding="utf-8")
+        self.driver.get("about:blank")  # so that nothing of the page before, or of the browser's own, is counted
         for kind in ("performance", "browser"):
-            self.driver.get_log(kind)
+            self._log(kind)
         self.driver.get(path.as_uri())
+
+    def _log(self, kind: str) -> list[dict[str, Any]]:
+        """Entries of one of the browser's logs since it was last asked."""
+        entries: list[dict[str, Any]] = self.driver.execute("getLog", {"type": kind})["value"]
+        return entries
 
     def requests(self) -> list[str]:
         """Address of everything asked for since the page was opened."""
-        messages = [json.loads(entry["message"])["message"] for entry in self.driver.get_log("performance")]
+        messages = [json.loads(entry["message"])["message"] for entry in self._log("performance")]
         return [
             message["params"]["request"]["url"]
             for message in messages
@@ -78,7 +84,7 @@ class Browser:
 
     def complaints(self) -> list[str]:
         """What the console says."""
-        return [entry["message"] for entry in self.driver.get_log("browser")]
+        return [entry["message"] for entry in self._log("browser")]
 
     def see_as(self, *, media: str = "screen", scheme: str = "light") -> None:
         """Screen or print, light or dark."""
@@ -94,7 +100,8 @@ class Browser:
         return self.driver.execute_script(script)
 
     def printed(self) -> bytes:
-        """The page as PDF on the paper that its own style asks for."""
+        """The page as PDF on the paper that its own style asks for, by the style for print."""
+        self.driver.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": "", "features": []})
         result = self.driver.execute_cdp_cmd("Page.printToPDF", {"preferCSSPageSize": True, "printBackground": True})
         return base64.b64decode(result["data"])
 
