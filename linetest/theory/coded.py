@@ -81,9 +81,10 @@ class DecodedCurve:
             Bit error rate of the same shape.
         """
         below = ebn0_db < self.last_db
-        simulated = self._spline(np.where(below, ebn0_db, self.last_db))
-        rates = 0.5 * np.exp(-np.exp(simulated))
-        return np.asarray(np.where(below, rates, self._lean_on_bound(ebn0_db)), dtype=np.float64)
+        rates = np.empty_like(ebn0_db)
+        rates[below] = 0.5 * np.exp(-np.exp(self._spline(ebn0_db[below])))
+        rates[~below] = self._lean_on_bound(ebn0_db[~below])
+        return rates
 
     def uncertainty_db(self, ebn0_db: FloatArray) -> FloatArray:
         """Standard uncertainty of the curve as a shift along Eb/N0.

@@ -63,6 +63,8 @@ def curve_uncertainty_db(scheme: str, ebn0_db: float | FloatArray) -> float | Fl
 
 def _known_levels(scheme: str, curve: Curve, ebn0_db: float | FloatArray) -> FloatArray:
     levels = checked_ebn0_db(ebn0_db)
+    if np.isinf(curve.least_ebn0_db):
+        return levels
     unknown = levels < curve.least_ebn0_db - _EDGE_DB
     if unknown.any():
         rule = f"be at least {curve.least_ebn0_db:.3f} dB for {scheme}: nothing is simulated below"
@@ -161,6 +163,8 @@ def required_ebn0_db(scheme: str, bit_error_rate: float | FloatArray) -> float |
         ParameterError: The scheme is unknown or the rate is outside its rule.
     """
     curve = find_curve(scheme)
+    if isinstance(bit_error_rate, float) and 0.0 < bit_error_rate < 0.5 and np.isinf(curve.least_ebn0_db):
+        return float(curve.ebn0_db(np.asarray(bit_error_rate)))
     rates = as_float_array("bit_error_rate", bit_error_rate)
     _check_rates(rates, scheme, curve)
     return in_shape_of(bit_error_rate, curve.ebn0_db(rates))

@@ -13,6 +13,7 @@ from functools import lru_cache
 from typing import overload
 
 import numpy as np
+import numpy.typing as npt
 from scipy.optimize import brentq
 
 from linetest.errors import ParameterError
@@ -38,13 +39,13 @@ class _Rail:
     """Means of one rail's level, scaled so that a perfect rail has unit mean square.
 
     Attributes:
-        sent: The symbol sent on this rail, shape (k,).
-        mean: Mean level, shape (phases, k).
+        outer: True where a level beyond the outer thresholds was sent, shape (k,).
+        toward: Mean level, positive on the side of the symbol sent, shape (phases, k).
         weight: Chance of each case, shape (k,).
     """
 
-    sent: FloatArray
-    mean: FloatArray
+    outer: npt.NDArray[np.bool_]
+    toward: FloatArray
     weight: FloatArray
 
 
@@ -60,6 +61,13 @@ def _neighbours(offset: float, rolloff: float, *, binary: bool) -> tuple[float, 
     half_off = np.arange(0.5 - _ISI_SYMBOLS, _ISI_SYMBOLS) + offset
     staggered = sum_of_terms(alphabet, raised_cosine(half_off, rolloff))
     return float(raised_cosine(np.asarray(offset), rolloff)), same, staggered
+
+
+@lru_cache(maxsize=64)
+def _geometry(scheme: str, impairments: Impairments) -> tuple[tuple[_Rail, ...], FloatArray]:
+    """All that does not depend on Eb/N0: the rails and the weights of the phases."""
+    rails = () if scheme == "8psk" else tuple(_rails(scheme, impairments))
+    return rails, impairments.phases()[1]
 
 
 def _rails(scheme: str, impairments: Impairments) -> Iterator[_Rail]:
@@ -85,7 +93,7 @@ def _rails(scheme: str, impairments: Impairments) -> Iterator[_Rail]:
         mean = ((turn * own_axis * view).real * (own * sent + near)[None, :]) + (
             (turn * other_axis * view).real * far[None, :] + (turn * leak * view).real
         )
-        yield _Rail(sent, mean, weight)
+        yield _Rail(np.abs(sent) > _EDGE_16, np.asarray(mean * np.sign(sent)), weight)
         if single:
             return
 
@@ -101,14 +109,13 @@ def _cases(symbol: Levels, same: Levels, other: Levels) -> tuple[FloatArray, Flo
 
 def _rail_error(rail: _Rail, noise_scale: FloatArray, *, quaternary: bool) -> FloatArray:
     """Bit error rate of one rail for each level and phase; the scale is the inverse of the noise's deviation."""
-    toward = rail.mean * np.sign(rail.sent)
+    toward = rail.toward
     wrong_side = gaussian_tail(noise_scale * toward)
     if not quaternary:
         return np.asarray(wrong_side @ rail.weight)
     beyond = gaussian_tail(noise_scale * (_EDGE_16 - toward)) + gaussian_tail(noise_scale * (_EDGE_16 + toward))
     within = gaussian_tail(noise_scale * (toward - _EDGE_16)) - gaussian_tail(noise_scale * (toward + _EDGE_16))
-    outer = np.abs(rail.sent) > _EDGE_16
-    return np.asarray(0.5 * (wrong_side + np.where(outer, within, beyond)) @ rail.weight)
+    return np.asarray(0.5 * (wrong_side + np.where(rail.outer, within, beyond)) @ rail.weight)
 
 
 def _octal_error(impairments: Impairments, noise_scale: FloatArray) -> FloatArray:
@@ -139,8 +146,7 @@ _AT_ONCE = 100_000
 
 def _noisy_rate(scheme: str, ebn0_db: FloatArray, impairments: Impairments) -> FloatArray:
     """Bit error rate that noise causes, averaged over symbols, neighbours and carrier phase."""
-    phase_weight = impairments.phases()[1]
-    rails = [] if scheme == "8psk" else list(_rails(scheme, impairments))
+    rails, phase_weight = _geometry(scheme, impairments)
     cases = 8 if not rails else rails[0].weight.size
     scale = amplitude(ebn0_db - impairments.loss_db) * np.sqrt(2.0 * _BITS_PER_RAIL.get(scheme, 1.0))
     step = max(1, _AT_ONCE // (phase_weight.size * cases))
