@@ -1,0 +1,1 @@
+"""Ratios measured side by side in one run; ``python -m benchmarks`` prints the table."""
