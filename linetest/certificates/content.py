@@ -150,15 +150,16 @@ def check_rows(run: RunRecord) -> tuple[CheckRows, ...]:
     Returns:
         The checks in the order of the procedure.
     """
-    order = dict.fromkeys(
-        [_place(reading) for reading in run.readings] + [(item.check, item.step) for item in run.judgements]
-    )
+    taken: dict[tuple[str, int | None], list[ReadingRecord]] = {}
+    for reading in run.readings:
+        taken.setdefault(_place(reading), []).append(reading)
+    order = dict.fromkeys([*taken, *((item.check, item.step) for item in run.judgements)])
     judged = {(item.check, item.step): item for item in run.judgements}
     groups = []
     for place in order:
         judgement = judged.get(place)
         facts = judgement.facts if judgement is not None else {}
-        rows = tuple(_row(item) for item in run.readings if _place(item) == place and not _told(item, facts))
+        rows = tuple(_row(item) for item in taken.get(place, ()) if not _told(item, facts))
         if judgement is not None and judgement.step is not None and facts and not rows:
             continue
         name = place[0] if place[1] is None else f"{place[0]}, step {place[1]}"

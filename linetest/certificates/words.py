@@ -55,8 +55,8 @@ def rate(value: float, digits: int = 3) -> Markup:
     if value == 0.0:
         return Markup("0")
     mantissa, exponent = f"{value:.{digits - 1}e}".split("e")
-    power = str(int(exponent)).replace("-", MINUS)
-    return Markup("{}{}×{}10<sup>{}</sup>").format(mantissa.replace("-", MINUS), THIN, THIN, power)
+    written = f"{mantissa}{THIN}×{THIN}10<sup>{int(exponent)}</sup>".replace("-", MINUS)
+    return Markup(written)  # noqa: S704  (digits and signs of our own)
 
 
 def percent(share: float) -> str:
@@ -84,7 +84,7 @@ def uncertainty_places(standard_uncertainty: float) -> int:
 
 
 def measured(value: float | str, standard_uncertainty: float | None = None) -> str:
-    """A reading's value, rounded to the place of its uncertainty; without one, four digits, three decimals at most.
+    """A reading's value, rounded to the place of its uncertainty; else four digits, few decimals.
 
     Args:
         value: The value; text passes unchanged.
@@ -101,8 +101,9 @@ def measured(value: float | str, standard_uncertainty: float | None = None) -> s
         return decimals(value, uncertainty_places(standard_uncertainty))
     if value.is_integer() and abs(value) >= 1000:
         return grouped(int(value))
-    if 0.001 <= abs(value) < 10_000.0:
-        return decimals(value, min(3, max(0, 3 - math.floor(math.log10(abs(value))))))
+    if 1e-6 <= abs(value) < 10_000.0:
+        magnitude = math.floor(math.log10(abs(value)))
+        return decimals(value, max(0, min(3, 3 - magnitude), 1 - magnitude))
     return f"{value:.4g}".replace("-", MINUS)
 
 

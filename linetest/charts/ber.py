@@ -178,7 +178,7 @@ def ber_chart(
     parts += [_drawn_curve(curve, x, y) for curve in curves]
     parts += [_guard(point, x, y) for point in points]
     parts.append("</g>")
-    parts += [_curve_label(curve, x, y) for curve in curves]
+    parts += [_curve_label(curve, x, y, [x(point.ebn0_db) for point in points]) for curve in curves]
     parts.append(path("frame", _box()))
     parts += [_drawn_point(point, x, y) for point in points]
     return sheet(
@@ -250,21 +250,23 @@ def _drawn_curve(curve: BerCurve, x: LinearScale, y: DecadeScale) -> str:
     return path("beyond", beyond) + path("limit", line)
 
 
-def _curve_label(curve: BerCurve, x: LinearScale, y: DecadeScale) -> str:
-    """The curve's name beside it: the limit's to its right, theory's to its left, a second theory's below that."""
+def _curve_label(curve: BerCurve, x: LinearScale, y: DecadeScale, taken: Sequence[float]) -> str:
+    """The curve's name beside it: the limit's to its right, theory's to its left where no point is near.
+
+    A second theory would have its name among the points, so it stands in the corner and names its stroke.
+    """
     trace = [spot for spot in _trace(curve, x, y) if LEFT <= spot[0] <= RIGHT and TOP <= spot[1] <= BOTTOM]
     if not trace:
         return ""
-    share = {"limit": 0.2, "theory": 0.62, "second": 0.8}[curve.kind]
-    height = trace[0][1] + share * (trace[-1][1] - trace[0][1])
-    spot = min(trace, key=lambda place: abs(place[1] - height))
     text = escaped(shortened(curve.label, 44))
+    if curve.kind == "second":
+        return label(LEFT + 12, BOTTOM - 12, f"dotted: {text}", kind="mid halo")
     if curve.kind == "limit":
+        spot = trace[len(trace) // 3]
         return label(spot[0] + 12, spot[1] + 1, text, kind="t-limit halo")
-    if curve.kind == "theory":
-        return label(spot[0] - 12, spot[1] + 8, text, kind="t-theory halo", anchor="end")
-    # Beside its own curve it would lie among the points, so it stands left of theory and names its stroke.
-    return label(LEFT + 12, BOTTOM - 12, f"dotted: {text}", kind="mid halo")
+    middle = trace[len(trace) // 2 : max(len(trace) // 2 + 1, len(trace) * 9 // 10)]
+    spot = max(middle, key=lambda place: min((abs(place[0] - 25.0 - point) for point in taken), default=0.0))
+    return label(spot[0] - 12, spot[1] + 8, text, kind="t-theory halo", anchor="end")
 
 
 def _guard(point: BerPoint, x: LinearScale, y: DecadeScale) -> str:

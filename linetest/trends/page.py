@@ -30,7 +30,7 @@ def render_yield_page(report: YieldReport, *, templates_folder: Path) -> str:
         "report": report,
         "charts": [(kind, _chart(kind, rows, report.total)) for kind, rows in report.groups.items() if rows],
         "rejects": _rejects(report),
-        "span": f"{days[0].name} to {days[-1].name}" if days else "",
+        "span": " to ".join(dict.fromkeys((days[0].name, days[-1].name))) if days else "",
     }
     return render_page("yield.html", templates_folder, content, foot="First-pass yield")
 
