@@ -48,7 +48,7 @@ def gaussian_tail(x: FloatArray) -> FloatArray:
     return np.asarray(0.5 * special.erfc(x * _SQRT_HALF), dtype=np.float64)
 
 
-def checked_ebn0_db(ebn0_db: npt.ArrayLike) -> FloatArray:
+def checked_ebn0_db(ebn0_db: float | npt.ArrayLike) -> FloatArray:
     """Eb/N0 as an array of finite dB values.
 
     Args:

@@ -13,8 +13,9 @@ from linetest.theory import (
     trusted_ber_range,
     union_bound,
 )
-from linetest.theory.coded import DecodedCurve
+from linetest.theory.coded import DecodedCurve, union_bound_of
 from linetest.theory.decoder_tables import DECODER_ROWS
+from linetest.theory.inverse import CurveInverse
 
 every_code = pytest.mark.parametrize("code", DECODER_ROWS)
 
@@ -82,3 +83,11 @@ def test_nothing_is_said_below_the_first_simulated_point() -> None:
         required_ebn0_db("qpsk+conv-1/2", 0.2)
     with pytest.raises(ParameterError, match=r"scheme is '8psk\+conv-1/2', but must be one of bpsk.*after a plus"):
         bit_error_rate("8psk+conv-1/2", 5.0)
+
+
+def test_bound_alone_would_be_too_loose_for_a_limit_near_1e_5() -> None:
+    """In dB the bound of rate 1/2 needs more than it should: below 0.03 dB only from about 7e-6 down."""
+    for rate, excess_db in ((8.1e-5, 0.10), (1.6e-5, 0.048), (2.9e-6, 0.013)):
+        bound = CurveInverse(union_bound_of("conv-1/2"))
+        needed_db = float(bound(np.asarray(rate))) - required_ebn0_db("qpsk+conv-1/2", rate)
+        assert needed_db == pytest.approx(excess_db, abs=0.012)
