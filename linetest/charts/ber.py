@@ -18,6 +18,7 @@ from linetest.theory import SCHEMES, bit_error_rate
 WIDTH, HEIGHT = 680.0, 356.0
 LEFT, RIGHT, TOP, BOTTOM = 56.0, 660.0, 12.0, 314.0
 CURVE_POINTS = 61
+LEAST_SPAN_DB = 3.5  # narrower, the fall of the curves and the distance between them cannot be seen
 CurveKind = Literal["theory", "second", "limit"]
 
 
@@ -140,11 +141,12 @@ def ber_range_db(points: Sequence[BerPoint]) -> tuple[float, float]:
         points: One point or more.
 
     Returns:
-        Low and high end, dB, multiples of 0.5.
+        Low and high end, dB, multiples of 0.5, at least `LEAST_SPAN_DB` apart.
     """
     low = min(point.ebn0_db for point in points)
     high = max(point.ebn0_db for point in points)
-    return math.floor(2.0 * low - 1.2) / 2.0, math.ceil(2.0 * high + 1.2) / 2.0
+    air = max(0.6, (LEAST_SPAN_DB - (high - low)) / 2.0)
+    return math.floor(2.0 * (low - air)) / 2.0, math.ceil(2.0 * (high + air)) / 2.0
 
 
 def ber_chart(
@@ -263,10 +265,10 @@ def _curve_label(curve: BerCurve, x: LinearScale, y: DecadeScale, taken: Sequenc
         return label(LEFT + 12, BOTTOM - 12, f"dotted: {text}", kind="mid halo")
     if curve.kind == "limit":
         spot = trace[len(trace) // 3]
-        return label(spot[0] + 12, spot[1] + 1, text, kind="t-limit halo")
+        return label(spot[0] + 10, spot[1] - 5, text, kind="t-limit halo")
     middle = trace[len(trace) // 2 : max(len(trace) // 2 + 1, len(trace) * 9 // 10)]
     spot = max(middle, key=lambda place: min((abs(place[0] - 25.0 - point) for point in taken), default=0.0))
-    return label(spot[0] - 12, spot[1] + 8, text, kind="t-theory halo", anchor="end")
+    return label(spot[0] - 8, spot[1] + 13, text, kind="t-theory halo", anchor="end")
 
 
 def _guard(point: BerPoint, x: LinearScale, y: DecadeScale) -> str:

@@ -122,6 +122,16 @@ def test_a_second_theory_and_a_curve_alone_can_be_drawn() -> None:
     assert "dotted: theory DE-QPSK" in words(root)
 
 
+@pytest.mark.parametrize("levels_db", [(5.4,), (6.8, 8.4), (6.79, 8.43, 9.58, 10.52)])
+def test_the_range_shows_every_point_with_air_and_is_never_too_narrow(levels_db: tuple[float, ...]) -> None:
+    low_db, high_db = ber_range_db([BerPoint(level_db, 1000, 3, 1e-3, 8e-3) for level_db in levels_db])
+    assert low_db <= min(levels_db) - 0.5
+    assert high_db >= max(levels_db) + 0.5
+    assert high_db - low_db >= 3.5
+    assert (2.0 * low_db).is_integer()
+    assert (2.0 * high_db).is_integer()
+
+
 def test_nothing_to_draw_is_refused() -> None:
     with pytest.raises(ParameterError, match="hold a point where there is no curve"):
         ber_chart([], [])
@@ -130,7 +140,7 @@ def test_nothing_to_draw_is_refused() -> None:
 def test_a_point_that_cannot_be_is_refused() -> None:
     with pytest.raises(ParameterError, match="lie between 0 and the 10 bits counted"):
         BerPoint(8.0, 10, 11, 0.0, 1.0)
-    with pytest.raises(ParameterError, match="hold the bit error rate of 0.5"):
+    with pytest.raises(ParameterError, match=r"hold the bit error rate of 0\.5"):
         BerPoint(8.0, 10, 5, 0.6, 0.9)
 
 
