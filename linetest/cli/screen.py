@@ -108,7 +108,10 @@ class Screen:
         line = Text.assemble(
             (f"{_MARKS[judged.judgement]} ", _STYLES[judged.judgement]), (f"{where}: ", "bold"), judged.sentence
         )
-        self._lines.append(line)
+        if self._live is not None:
+            self._lines.append(line)
+        elif not self._brief:
+            self._console.print(line)
         self._step, self._progress = None, None
 
     def _end(self, ended: RunEnded) -> None:
