@@ -256,7 +256,9 @@ def evaluate(
     _check(quantities, correlations or {})
     numbers = _uncertain_numbers(quantities, correlations or {})
     result = model(numbers) + GTC.constant(0.0)
-    dof = float(GTC.dof(result)) if GTC.uncertainty(result) > 0.0 else math.inf
+    # No fewer than the least of the inputs: the formula says so, its rounding need not.
+    least = min((item.dof for item in quantities), default=math.inf)
+    dof = max(least, float(GTC.dof(result))) if GTC.uncertainty(result) > 0.0 else math.inf
     return Budget(
         value=float(GTC.value(result)),
         u=float(GTC.uncertainty(result)),
@@ -291,8 +293,8 @@ def _check(quantities: Sequence[Quantity], correlations: Correlations) -> None:
             raise ParameterError(f"value of {item.name}", item.value, "be finite")
         if not (math.isfinite(item.u) and item.u >= 0.0):
             raise ParameterError(f"u of {item.name}", item.u, "be finite and not negative")
-        if not item.dof > 0.0:
-            raise ParameterError(f"dof of {item.name}", item.dof, "be above 0")
+        if not item.dof >= 1.0:
+            raise ParameterError(f"dof of {item.name}", item.dof, "be 1 or more")
     for pair, coefficient in correlations.items():
         if pair[0] not in names or pair[1] not in names or pair[0] == pair[1]:
             raise ParameterError("correlations", pair, "name two different quantities")

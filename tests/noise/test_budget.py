@@ -186,7 +186,7 @@ A, B = Quantity("a", 1.0, 0.1, "dB"), Quantity("b", 1.0, 0.1, "dB")
         ([A, A], {}, "quantities is 'a', but must have each name once"),
         ([A, Quantity("b", math.nan, 0.1, "dB")], {}, "value of b is nan, but must be finite"),
         ([A, Quantity("b", 1.0, -0.1, "dB")], {}, "u of b is -0.1, but must be finite and not negative"),
-        ([A, Quantity("b", 1.0, 0.1, "dB", dof=0.0)], {}, "dof of b is 0.0, but must be above 0"),
+        ([A, Quantity("b", 1.0, 0.1, "dB", dof=0.0)], {}, "dof of b is 0.0, but must be 1 or more"),
         ([A, B], {("a", "c"): 0.5}, "must name two different quantities"),
         ([A, B], {("a", "a"): 0.5}, "must name two different quantities"),
         ([A, B], {("a", "b"): 1.5}, "correlations is 1.5, but must lie between -1 and"),
