@@ -68,12 +68,6 @@ def test_known_polarity_starts_with_as_many_zeros_as_stages() -> None:
         assert bits[O150_TABLE[name][0]] == 1
 
 
-@pytest.mark.parametrize("name", O150_TABLE)
-def test_registers_are_those_of_the_table(name: str) -> None:
-    stages, tap, _ = O150_TABLE[name]
-    assert (PATTERNS[name].stages, PATTERNS[name].tap) == (stages, tap)
-
-
 @pytest.mark.parametrize("name", [name for name, (stages, _, _) in O150_TABLE.items() if stages <= 23])
 def test_period_ones_and_longest_run_of_zeros(name: str) -> None:
     """A maximal sequence has 2^(n-1) ONEs in a period; the zero-suppressed one has 31 more (O.150, 5.5)."""
