@@ -152,7 +152,7 @@ _LOT: dict[int, tuple[dict[str, object], str, str]] = {
     120: ({"current_a": 0.93}, "draws too much current", "FAIL"),
     121: ({"jitter_rad": 0.17, "jitter_bandwidth_hz": 2.0e3}, "slow phase jitter", "FAIL"),
     122: (
-        {"fault": InstrumentFault("unit_port", "die", "COUN:UNT", 40)},
+        {"fault": InstrumentFault("unit_port", "die", "COUN:UNT", 12)},
         "port drops its connection in a step",
         "VOID",
     ),
