@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import Literal
 
 import numpy as np
@@ -216,7 +217,9 @@ def _box() -> str:
     return f"M{number(LEFT)} {number(TOP)}H{number(RIGHT)}V{number(BOTTOM)}H{number(LEFT)}Z"
 
 
+@lru_cache(maxsize=64)
 def _grid(x: LinearScale, y: DecadeScale) -> str:
+    """Lines and labels of the scales; a lot's units share a few."""
     hair = "".join(across(LEFT, RIGHT, y(value)) for value in y.minor()) if len(y.decades) <= 7 else ""
     ticks = x.ticks(12)
     rule = "".join(across(LEFT, RIGHT, y(10.0**exponent)) for exponent in y.decades)
