@@ -213,9 +213,13 @@ def _check_rates(good_ber: float, limit_ber: float) -> None:
 
 def _checked_weights(weights: BurstWeights) -> BurstWeights:
     total = sum(share for _, share in weights)
-    if not weights or any(size < 1 or share <= 0.0 for size, share in weights) or abs(total - 1.0) > 1e-9:
+    if (
+        not weights
+        or any(size < 1 or size != int(size) or not share > 0.0 for size, share in weights)
+        or abs(total - 1.0) > 1e-9
+    ):
         raise ParameterError(
-            "burst_weights", weights, "be (errors of 1 or more, share above 0) pairs, shares summing to 1"
+            "burst_weights", weights, "be (whole errors of 1 or more, share above 0) pairs, shares summing to 1"
         )
     merged = tuple((int(size), float(share)) for size, share in weights)
     return INDEPENDENT if merged == ((1, total),) else merged

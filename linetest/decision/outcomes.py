@@ -21,7 +21,6 @@ BurstWeights = tuple[tuple[int, float], ...]
 
 INDEPENDENT: BurstWeights = ((1, 1.0),)
 TAIL = 1e-18
-BINOMIAL_ABOVE_BER = 1e-4
 
 
 @dataclass(frozen=True)
@@ -78,9 +77,9 @@ def increments(bits: int, ber: float, weights: BurstWeights) -> FloatArray:
     if weights == INDEPENDENT:
         count = np.arange(int(mean + 12.0 * np.sqrt(mean) + 24.0) + 1)
         count = count[count <= bits]
-        log_ways = special.gammaln(bits + 1) - special.gammaln(count + 1) - special.gammaln(bits - count + 1)
-        if bits > 1e9:
-            log_ways = count * np.log(bits) - special.gammaln(count + 1)
+        # Factor by factor: the difference of two log factorials of 1e9 bits would lose ten digits.
+        falling = np.concatenate([[0.0], np.cumsum(np.log(bits - count[:-1].astype(np.float64)))])
+        log_ways = falling - special.gammaln(count + 1)
         chances = np.exp(log_ways + count * np.log(ber) + (bits - count) * np.log1p(-ber))
     else:
         chances = _compound(mean, weights)

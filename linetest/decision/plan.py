@@ -21,6 +21,8 @@ from linetest.decision.outcomes import INDEPENDENT, BurstWeights, IntArray, Stop
 from linetest.errors import ParameterError
 from linetest.units import FloatArray
 
+LOST_AT_MOST = 1e-9
+
 
 class Outcome(StrEnum):
     """What a plan says after a look."""
@@ -179,6 +181,10 @@ class Plan:
             stops = self.stops()
             chances = stops.at(flat)
             values = chances @ (stops.bits if of_bits else stops.accepted).astype(np.float64)
+            # Stops too unlikely for the shared pass are not in it; a rate that needs them gets a pass of its own.
+            for far in np.flatnonzero(np.abs(chances.sum(axis=1) - 1.0) > LOST_AT_MOST):
+                own = self.stops(float(flat[far]))
+                values[far] = own.probability @ (own.bits if of_bits else own.accepted).astype(np.float64)
         else:
             passes = [self.stops(float(rate)) for rate in flat]
             values = np.array([s.probability @ (s.bits if of_bits else s.accepted).astype(np.float64) for s in passes])
@@ -238,7 +244,8 @@ def boundary_counts(
     Returns:
         Accepting counts (-1 where none) and rejecting counts, shape (looks,).
     """
-    middle = slope * look_bits * np.arange(1, looks + 1)
+    # Bits first, as decide() has them: the two must agree to the last bit of the floating point.
+    middle = slope * (look_bits * np.arange(1, looks + 1, dtype=np.int64))
     accept = np.maximum(np.floor(middle - accept_gap), -1.0).astype(np.int64)
     reject = np.ceil(middle + reject_gap).astype(np.int64)
     accept[-1], reject[-1] = last_accept, last_accept + 1
