@@ -9,7 +9,8 @@ from pydantic import ValidationError
 
 from linetest.decision import fixed_test_bits
 from linetest.errors import LinetestError, ParameterError, SheetFault
-from linetest.limits.sheet import BerCheck, Mode, Strict, named
+from linetest.limits.sheet import BerCheck
+from linetest.limits.tables import Mode, Strict, named
 from linetest.theory import bit_error_rate
 
 # Steeper than this between design loss and margin, a plan degenerates to "no error at all": 0.1 dB of Eb/N0

@@ -19,12 +19,10 @@ from linetest.limits.sheet import (
     CarrierLimits,
     LimitSheet,
     LockLimits,
-    Mode,
     Procedure,
-    Strict,
     SupplyLimits,
-    named,
 )
+from linetest.limits.tables import Mode, Strict, named
 from linetest.settings import shipped_folder
 
 # Sheets are a few kilobytes; a larger file is something else.

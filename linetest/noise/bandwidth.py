@@ -15,7 +15,8 @@ import numpy as np
 from scipy.integrate import trapezoid
 
 from linetest.errors import ParameterError
-from linetest.noise.budget import Budget, Quantity, Value, evaluate
+from linetest.noise.budget import Budget, evaluate
+from linetest.noise.quantities import Quantity, Value
 from linetest.units import FloatArray, db_to_ratio
 
 LEAST_POINTS = 11

@@ -17,33 +17,12 @@ from pydantic import ValidationError
 from linetest.errors import CalibrationError
 from linetest.instruments import NoiseFacts
 from linetest.noise import model
-from linetest.noise.budget import Budget, Contribution, Quantity, covariance, evaluate
-from linetest.noise.station import CALIBRATED_ROLES, NoiseStation
+from linetest.noise.budget import Budget, Contribution, covariance, evaluate
+from linetest.noise.quantities import Quantity
+from linetest.noise.station import ADVICE, CalibratedWith, NoiseStation, instruments_of
 from linetest.units import FloatArray
 
 FORMAT = 1
-ADVICE = "run 'linetest station calibrate'"
-
-
-@dataclass(frozen=True, slots=True)
-class CalibratedWith:
-    """An instrument that the calibration was made with, and holds for.
-
-    Attributes:
-        role: Its role.
-        identity: Its answer to the identity query.
-        serial: Its serial by the station sheet.
-        certificate: Number of its calibration certificate, empty where it needs none.
-        calibration_due: Day its own calibration falls due, ISO date, empty where it needs none.
-        dialect_digest: SHA-256 of the dialect file spoken with it.
-    """
-
-    role: str
-    identity: str
-    serial: str
-    certificate: str
-    calibration_due: str
-    dialect_digest: str
 
 
 @dataclass(frozen=True)
@@ -262,77 +241,3 @@ def _n0_quantities(
 
 def _n0_budget(facts: NoiseFacts, floor: Sequence[float], table: Sequence[Sequence[float]], index: int) -> Budget:
     return evaluate(model.n0_dbm_hz, _n0_quantities(facts, floor, table, index))
-
-
-def instruments_of(station: NoiseStation) -> tuple[CalibratedWith, ...]:
-    """The instruments that a noise calibration holds for, as they stand now.
-
-    Args:
-        station: The open station.
-
-    Returns:
-        One entry a role.
-    """
-    entries = {role: station.sheet.entry(role) for role in CALIBRATED_ROLES}
-    return tuple(
-        CalibratedWith(
-            role=role,
-            identity=station.identities[role],
-            serial=entry.serial,
-            certificate=entry.certificate,
-            calibration_due=entry.calibration_due.isoformat() if entry.calibration_due else "",
-            dialect_digest=station.dialect_digests[role],
-        )
-        for role, entry in entries.items()
-    )
-
-
-def check_current(calibration: NoiseCalibration, station: NoiseStation, *, now: datetime) -> None:
-    """Make sure that a calibration holds for a station now.
-
-    Args:
-        calibration: The calibration.
-        station: The open station.
-        now: Date and time, aware.
-
-    Raises:
-        CalibrationError: It is out of date, belongs to another station, or the station changed since.
-    """
-    for trouble in (_wrong_time(calibration, now), _changed(calibration, station), _overdue(calibration, now)):
-        if trouble:
-            raise CalibrationError(f"{trouble}; {ADVICE}")
-
-
-def _wrong_time(calibration: NoiseCalibration, now: datetime) -> str:
-    if now > calibration.valid_until:
-        return f"the noise calibration ran out at {calibration.valid_until:%Y-%m-%d %H:%M %Z}"
-    if now < calibration.started_at:
-        return (
-            f"the noise calibration is dated {calibration.started_at:%Y-%m-%d %H:%M %Z}, in the future: check the clock"
-        )
-    return ""
-
-
-def _changed(calibration: NoiseCalibration, station: NoiseStation) -> str:
-    if calibration.station != station.sheet.name:
-        return f"the noise calibration belongs to station {calibration.station}, not to {station.sheet.name}"
-    if calibration.facts != station.sheet.noise:
-        return "the station sheet's noise facts changed since the noise calibration"
-    for made_with, stands in zip(calibration.instruments, instruments_of(station), strict=True):
-        role = stands.role.replace("_", " ")
-        if (made_with.role, made_with.identity, made_with.serial) != (stands.role, stands.identity, stands.serial):
-            return (
-                f"the {role} was {made_with.identity} (serial {made_with.serial}) at the noise calibration "
-                f"and is {stands.identity} (serial {stands.serial}) now"
-            )
-        if made_with.dialect_digest != stands.dialect_digest:
-            return f"the dialect of the {role} changed since the noise calibration"
-    return ""
-
-
-def _overdue(calibration: NoiseCalibration, now: datetime) -> str:
-    for instrument in calibration.instruments:
-        if instrument.calibration_due and now.date().isoformat() > instrument.calibration_due:
-            role = instrument.role.replace("_", " ")
-            return f"the {role}'s own calibration fell due on {instrument.calibration_due}: have it calibrated, then"
-    return ""

@@ -21,7 +21,7 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 
 from linetest.instruments import NoiseFacts
-from linetest.noise.budget import Quantity, Value, power_ratio, power_ratio_db
+from linetest.noise.quantities import Quantity, Value, power_ratio, power_ratio_db
 from linetest.units import db_to_ratio
 
 ROUNDING_DB = 0.01

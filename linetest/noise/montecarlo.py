@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from linetest.errors import ParameterError
-from linetest.noise.budget import DIVISORS, Correlations, Model, Quantity
+from linetest.noise.quantities import DIVISORS, Correlations, Model, Quantity
 from linetest.units import FloatArray
 
 

@@ -11,10 +11,12 @@ import numpy as np
 
 from linetest.errors import CalibrationError, ParameterError
 from linetest.noise import model
-from linetest.noise.budget import Budget, Contribution, Quantity, covariance, evaluate
-from linetest.noise.calibration import ADVICE, NoiseCalibration
+from linetest.noise.budget import Budget, Contribution, covariance, evaluate
+from linetest.noise.calibration import NoiseCalibration
 from linetest.noise.measure import CarrierReading
 from linetest.noise.montecarlo import MonteCarloResult, propagate
+from linetest.noise.quantities import Quantity
+from linetest.noise.station import ADVICE
 from linetest.units import FloatArray, ratio_to_db
 
 SettingRule = Literal["nearest", "from-below", "from-above"]

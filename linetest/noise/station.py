@@ -1,14 +1,38 @@
-"""What a noise calibration needs of a station: a narrow edge that a test's stand-in can have too."""
+"""What a noise calibration needs of a station, and notes of it: a narrow edge that a test's stand-in can have too."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass
 from typing import Protocol
 
 from linetest.instruments import StationSheet
 
 # The instruments whose exchange makes a calibration void. The unit's port and the supply do not touch N0.
 CALIBRATED_ROLES = ("noise_source", "attenuator", "power_meter")
+
+ADVICE = "run 'linetest station calibrate'"
+
+
+@dataclass(frozen=True, slots=True)
+class CalibratedWith:
+    """An instrument that the calibration was made with, and holds for.
+
+    Attributes:
+        role: Its role.
+        identity: Its answer to the identity query.
+        serial: Its serial by the station sheet.
+        certificate: Number of its calibration certificate, empty where it needs none.
+        calibration_due: Day its own calibration falls due, ISO date, empty where it needs none.
+        dialect_digest: SHA-256 of the dialect file spoken with it.
+    """
+
+    role: str
+    identity: str
+    serial: str
+    certificate: str
+    calibration_due: str
+    dialect_digest: str
 
 
 class Switch(Protocol):
@@ -81,3 +105,26 @@ class NoiseStation(Protocol):
 
     def make_safe(self) -> Mapping[str, str]:
         """Switch everything off; by role the reason why that could not be shown, empty where it is off."""
+
+
+def instruments_of(station: NoiseStation) -> tuple[CalibratedWith, ...]:
+    """The instruments that a noise calibration holds for, as they stand now.
+
+    Args:
+        station: The open station.
+
+    Returns:
+        One entry a role.
+    """
+    entries = {role: station.sheet.entry(role) for role in CALIBRATED_ROLES}
+    return tuple(
+        CalibratedWith(
+            role=role,
+            identity=station.identities[role],
+            serial=entry.serial,
+            certificate=entry.certificate,
+            calibration_due=entry.calibration_due.isoformat() if entry.calibration_due else "",
+            dialect_digest=station.dialect_digests[role],
+        )
+        for role, entry in entries.items()
+    )

@@ -7,7 +7,7 @@ import re
 import pytest
 
 from linetest.limits import LimitSheet, derive_step, list_sheets, load_model
-from linetest.limits.derive import plan_for, plan_request
+from linetest.limits.plans import plan_for, plan_request
 from linetest.theory.decoder_tables import DECODER_ROWS
 from tests.limits.conftest import SHIPPED
 

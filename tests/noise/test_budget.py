@@ -12,7 +12,7 @@ from scipy import stats
 
 from linetest.errors import ParameterError
 from linetest.noise import Quantity, covariance, coverage_factor, evaluate
-from linetest.noise.budget import Value, log10, power_ratio, power_ratio_db
+from linetest.noise.quantities import Value, log10, power_ratio, power_ratio_db
 
 
 def end_gauge() -> tuple[Quantity, ...]:

@@ -11,8 +11,8 @@ from scipy import stats
 
 from linetest.errors import ParameterError
 from linetest.noise import Quantity, evaluate, propagate
-from linetest.noise.budget import Value
 from linetest.noise.montecarlo import draw
+from linetest.noise.quantities import Value
 from tests.noise.test_budget import end_gauge_length
 
 
