@@ -60,9 +60,7 @@ def shipped_folder(name: str) -> Path:
     for folder in (package / "shipped" / name, checkout[name]):
         if folder.is_dir():
             return folder
-    raise SettingsError(
-        f"the folder {name!r} that ships with linetest is missing beside {package}; install it again"
-    )
+    raise SettingsError(f"the folder {name!r} that ships with linetest is missing beside {package}; install it again")
 
 
 def load_settings(

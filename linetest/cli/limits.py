@@ -121,7 +121,9 @@ def _print_steps(sheet: LimitSheet, rows: list[dict[str, Any]]) -> None:
     from rich.console import Console
     from rich.table import Table
 
+    # Narrower than this a number would be cut, which is worse than a wrapped line.
     console = Console(highlight=False)
+    console.width = max(console.width, 116)
     console.print(f"{sheet.model} revision {sheet.revision}: {sheet.title}", style="bold", markup=False)
     table = Table(
         "Eb/N0\ndB",

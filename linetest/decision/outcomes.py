@@ -128,7 +128,7 @@ def walk(look_bits: int, accept: IntArray, reject: IntArray, ber: float, weights
             where.append((look + 1, beyond, alive[beyond - base :], False))
         alive = alive[first_alive - base : max(first_rejected - base, 0)]
         base = first_alive
-        if alive.size == 0:
+        if not alive.any():
             break
     bits = np.concatenate([np.full(part.size, look * look_bits, dtype=np.int64) for look, _, part, _ in where])
     errors = np.concatenate([first + np.arange(part.size, dtype=np.int64) for _, first, part, _ in where])

@@ -11,7 +11,6 @@ from scipy import special
 from linetest.decision import Plan
 from linetest.errors import ParameterError, PlanError
 from linetest.limits import LimitSheet, StepLimit, derive_step, limit_curve, load_model
-from linetest.limits.plans import curve_u_db, plan_request
 
 GATE_S = 1e-3
 
@@ -103,14 +102,6 @@ def test_unit_risks_are_shared_out_over_the_steps(sheet: LimitSheet) -> None:
     assert max(step.averaged_consumer_risk for step in guarded) <= check.consumer_risk * 1.001
 
 
-def test_look_is_never_shorter_than_the_counters_gate(sheet: LimitSheet) -> None:
-    low, high = derived(sheet, 6.8, 6.8, 0.06), derived(sheet, 10.5, 10.5, 0.06)
-    assert low.best_fixed_bits / 60 < 2048
-    assert low.guarded.plan.look_bits == 2048
-    assert high.guarded.plan.look_bits == high.best_fixed_bits // 60 > 2048
-    assert high.guarded.plan.max_bits <= sheet.procedure.ber[0].max_bits
-
-
 def test_equal_content_gives_the_same_plan(sheet: LimitSheet) -> None:
     first, second = derived(sheet, 8.4, 8.42, 0.0561), derived(load_model("BW-Q4"), 8.4, 8.42, 0.0599)
     assert first.guarded is second.guarded
@@ -128,26 +119,6 @@ def test_derivation_is_plain_data_with_the_source_of_each_number(sheet: LimitShe
     assert told["guarded_good_ber"] > told["design_ber"]
     assert told["sources"]["margin_db"].startswith("product specification PS-Q4")
     assert told["sources"]["scheme"].startswith("product specification PS-Q4")
-
-
-def test_uncertainty_of_a_simulated_curve_adds_to_that_of_ebn0() -> None:
-    coded = load_model("BW-Q4C")
-    check, mode = coded.procedure.ber[0], coded.modes[0]
-    own_db = curve_u_db(check, mode, 4.6)
-    assert own_db > 0.0
-    request = plan_request(check, mode, ebn0_db=4.6, u_db=0.06, shortest_gate_s=GATE_S)
-    assert request.u_db >= np.hypot(0.06, own_db)
-    assert request.u_db - np.hypot(0.06, own_db) < 0.005
-    uncoded = load_model("BW-Q4")
-    assert curve_u_db(uncoded.procedure.ber[0], uncoded.modes[0], 4.6) == 0.0
-
-
-def test_curve_of_a_coded_scheme_goes_on_at_its_worst_known_rate() -> None:
-    curve = limit_curve("qpsk+conv-1/2")
-    levels = np.array([-3.0, 0.0, 1.0, 3.0])
-    rates = curve(levels)
-    assert rates[0] == pytest.approx(rates[1], rel=1e-6)
-    assert rates[1] > rates[2] > rates[3]
 
 
 def test_step_that_the_sheet_does_not_carry_is_refused(sheet: LimitSheet) -> None:

@@ -20,7 +20,7 @@ from linetest.noise.budget import Contribution
 from linetest.units import FloatArray
 
 RATE_BPS = 2.048e6
-SETTINGS_DB = (14.0, 17.0, 20.0, 23.0, 26.0)
+SETTINGS_DB = (14.0, 20.0, 26.0)
 STATIONS = 1000
 
 
