@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pytest
 
@@ -12,7 +14,7 @@ from tests.decision.simulate import simulate
 
 def coarse_plan(ratio: float, risk: float = 0.01) -> Plan:
     """Looks of 1/12 of the best fixed test, so that all likely stops can be enumerated."""
-    asked = {"good_ber": 1e-4 / ratio, "limit_ber": 1e-4, "producer_risk": risk, "consumer_risk": risk}
+    asked: dict[str, Any] = {"good_ber": 1e-4 / ratio, "limit_ber": 1e-4, "producer_risk": risk, "consumer_risk": risk}
     fixed = fixed_test_bits(**asked)
     return design_plan(**asked, look_bits=fixed // 12, max_bits=2 * fixed)
 
@@ -102,7 +104,7 @@ def test_median_unbiased_rate_lies_in_the_interval_and_misses_evenly() -> None:
 
 
 def test_bursts_are_in_the_interval() -> None:
-    asked = {"good_ber": 1e-4 / 3.0, "limit_ber": 1e-4, "producer_risk": 0.01, "consumer_risk": 0.01}
+    asked: dict[str, Any] = {"good_ber": 1e-4 / 3.0, "limit_ber": 1e-4, "producer_risk": 0.01, "consumer_risk": 0.01}
     fixed = fixed_test_bits(**asked, burst_weights=((2, 1.0),))
     plan = design_plan(**asked, look_bits=fixed // 10, max_bits=2 * fixed, burst_weights=((2, 1.0),))
     stop = next(k for k, count in enumerate(plan.accept_errors, start=1) if count >= 0)

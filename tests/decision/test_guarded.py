@@ -85,5 +85,6 @@ def test_uncertainty_that_no_plan_carries_is_refused_with_one_that_could() -> No
     [("u_db", -0.1), ("u_db", float("nan")), ("ebn0_db", float("inf")), ("design_loss_db", 1.0), ("rule", "2U")],
 )
 def test_values_outside_their_rule_are_refused_by_name(name: str, value: object) -> None:
+    changed: dict[str, Any] = {"u_db": 0.05, name: value}
     with pytest.raises(ParameterError, match=rf"{name} is .* must"):
-        guarded(**({"u_db": 0.05} | {name: value}))
+        guarded(**changed)
