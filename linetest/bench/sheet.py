@@ -51,7 +51,7 @@ def write_station_sheet(
         "averaging_s = 0.02",
         "settle_s = 0.005",
         "calibration_valid_h = 12.0",
-        "calibration_min_db = 14.0",
+        "calibration_min_db = 2.0",
         "calibration_max_db = 26.0",
         "calibration_step_db = 0.25",
     ]

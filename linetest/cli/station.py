@@ -139,7 +139,7 @@ def _print_calibration(console: Console, calibration: NoiseCalibration, calibrat
     for setting_db, n0_dbm_hz, u_db in zip(
         calibration.settings_db, calibration.n0_dbm_hz, calibration.u_db, strict=True
     ):
-        if float(setting_db).is_integer():
+        if setting_db % 2.0 == 0.0:
             table.add_row(f"{setting_db:.2f}", f"{n0_dbm_hz:.3f}", f"{u_db:.3f}")
     console.print(table)
     console.print(f"kept as {calibration_id}, valid until {calibration.valid_until:%Y-%m-%d %H:%M} UTC")
