@@ -112,7 +112,8 @@ def calibrate_session(console: Console, session: Session) -> NoiseCalibration:
     )
     columns = (TextColumn("  calibrating"), BarColumn(), TextColumn("{task.completed}/{task.total}"))
     with Progress(*columns, TimeRemainingColumn(), console=console, transient=True) as progress:
-        task = progress.add_task("noise", total=len(settings_db))
+        # The floor before, and the first setting once more at the end, are levels too.
+        task = progress.add_task("noise", total=len(settings_db) + 2)
 
         def advance(*_: Any) -> None:
             progress.advance(task)

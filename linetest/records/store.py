@@ -333,8 +333,10 @@ def _judgement_row(judged: Judged) -> dict[str, Any]:
 
 def _engine(url: str) -> Engine:
     parsed = make_url(url)
-    if parsed.get_backend_name() == "sqlite" and parsed.database not in {None, "", ":memory:"}:
-        folder = Path(str(parsed.database)).expanduser().resolve().parent
+    database = parsed.database or ":memory:"
+    # A name that begins with "file:" is a URI with options of its own: SQLite makes of it what it says.
+    if parsed.get_backend_name() == "sqlite" and not database.startswith((":memory:", "file:")):
+        folder = Path(database).expanduser().resolve().parent
         try:
             folder.mkdir(parents=True, exist_ok=True)
         except OSError as reason:
