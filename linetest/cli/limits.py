@@ -47,12 +47,19 @@ def list_limits(limits: LimitsFolder = None, as_json: AsJson = False) -> None:
 
 
 @app.command("check")
-def check_limits(file: Annotated[Path, typer.Argument(help="Limit sheet (TOML).", dir_okay=False)]) -> None:
+def check_limits(
+    file: Annotated[Path, typer.Argument(help="Limit sheet (TOML).", dir_okay=False)], as_json: AsJson = False
+) -> None:
     """Check a limit sheet: every fault at once, with file, key, value and rule."""
+    import json
+
     from linetest.limits import load_sheet
 
     sheet = load_sheet(file)
-    typer.echo(f"{file}: {sheet.model} revision {sheet.revision} is in order")
+    if as_json:
+        typer.echo(json.dumps({"file": str(file), "model": sheet.model, "revision": sheet.revision, "ok": True}))
+    else:
+        typer.echo(f"{file}: {sheet.model} revision {sheet.revision} is in order")
 
 
 @app.command("show")
