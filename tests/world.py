@@ -83,7 +83,7 @@ class World:
 @contextmanager
 def served_bench(sheet_file: Path, *, seed: int = 1) -> Iterator[dict[str, str]]:
     """The simulated station in a second process, through the real command."""
-    command = [sys.executable, "-m", "linetest", "bench", "serve", "--json"]
+    command = [sys.executable, "-m", "linetest", "bench", "serve", "--follow-parent", "--json"]
     command += ["--seed", str(seed), "--write-sheet", str(sheet_file)]
     with subprocess.Popen(command, stdout=subprocess.PIPE, text=True, start_new_session=True) as process:
         try:

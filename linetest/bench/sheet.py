@@ -36,7 +36,7 @@ def write_station_sheet(
     lines = [
         "# Station sheet of the simulated station.",
         f'name = "{station}"',
-        'safe_off = ["noise_source", "unit_port", "supply"]',
+        'safe_off = ["supply", "noise_source", "unit_port"]',
         "",
         "[noise]",
         f"enbw_hz = {promised.enbw_hz:.1f}",

@@ -25,6 +25,9 @@ def serve_bench(
     write_sheet: Annotated[
         Path | None, typer.Option("--write-sheet", help="Write the matching station sheet here.", dir_okay=False)
     ] = None,
+    follow_parent: Annotated[
+        bool, typer.Option("--follow-parent", help="Stop when the program that started it is gone, however it went.")
+    ] = False,
     as_json: AsJson = False,
 ) -> None:
     """Serve every simulated instrument on a loopback port of its own until a signal.
@@ -32,11 +35,13 @@ def serve_bench(
     Prints the VISA resource of each role.
     """
     import json
+    import os
     import signal
     import threading
 
     from linetest.bench import Bench, serve, write_station_sheet
 
+    parent = os.getppid()
     done = threading.Event()
     for number in (signal.SIGINT, signal.SIGTERM, signal.SIGHUP):
         signal.signal(number, lambda *_: done.set())
@@ -53,6 +58,7 @@ def serve_bench(
             typer.echo("serving on loopback only; stop with Ctrl-C")
         # Never join a thread here: an event is woken by a signal at once.
         while not done.wait(0.5):
-            pass
+            if follow_parent and os.getppid() != parent:
+                break
     finally:
         served.close()

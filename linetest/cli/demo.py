@@ -76,7 +76,7 @@ def _bench_process(sheet_file: Path, seed: int) -> Iterator[dict[str, str]]:
     """The simulated station as a process of its own, for as long as the context lasts."""
     from linetest.errors import StationError
 
-    command = [sys.executable, "-m", "linetest", "bench", "serve", "--json", "--seed", str(seed)]
+    command = [sys.executable, "-m", "linetest", "bench", "serve", "--follow-parent", "--json", "--seed", str(seed)]
     command += ["--write-sheet", str(sheet_file)]
     # A session of its own: Ctrl-C at the terminal must reach the program first, which then makes the bench safe.
     process = subprocess.Popen(  # noqa: S603  (our own interpreter and module)

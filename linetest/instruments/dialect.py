@@ -6,7 +6,9 @@ verb and how to find the value in the answer; expressions, loops and conditions 
 
 from __future__ import annotations
 
+import codecs
 import hashlib
+import math
 import re
 import string
 import tomllib
@@ -184,8 +186,13 @@ def parse_dialect(path: Path, content: bytes) -> Dialect:
     faults: list[SheetFault] = []
     head = table.get("dialect", {})
     verbs_table = table.get("verb", {})
+    for key, found in (("dialect", head), ("verb", verbs_table)):
+        if not isinstance(found, dict):
+            faults.append(SheetFault(key, repr(found), "be a table"))
+    if faults:
+        raise SheetError(path, faults)
     role = head.get("role")
-    if role not in VERBS:
+    if not isinstance(role, str) or role not in VERBS:
         faults.append(SheetFault("dialect.role", repr(role), f"be one of {', '.join(VERBS)}"))
         raise SheetError(path, faults)
     known = {"name", "role", "fence", "shortest_gate_s", *_TEXTS, *_NUMBERS}
@@ -213,12 +220,21 @@ def _wrong_types(head: Mapping[str, Any]) -> list[SheetFault]:
         for key in _NUMBERS
         if key in head and (type(head[key]) is not int or head[key] < 0)
     ]
+    if isinstance(head.get("encoding"), str) and not _known_encoding(head["encoding"]):
+        faults.append(SheetFault("dialect.encoding", repr(head["encoding"]), "be a text encoding of Python"))
     if "fence" in head and type(head["fence"]) is not bool:
         faults.append(SheetFault("dialect.fence", repr(head["fence"]), "be true or false"))
     gate = head.get("shortest_gate_s", 1.0)
-    if not isinstance(gate, (int, float)) or gate <= 0:
+    if type(gate) not in {int, float} or not 0 < gate < math.inf:
         faults.append(SheetFault("dialect.shortest_gate_s", repr(gate), "be a time in s above 0"))
     return faults
+
+
+def _known_encoding(name: str) -> bool:
+    try:
+        return isinstance("".encode(codecs.lookup(name).name), bytes)
+    except (LookupError, ValueError):
+        return False
 
 
 def _verbs(role: str, table: Mapping[str, Any], faults: list[SheetFault]) -> dict[str, Verb]:
@@ -267,10 +283,14 @@ def _verb(name: str, rule: VerbRule, entry: Any, faults: list[SheetFault]) -> Ve
 
 def _placeholder_faults(key: str, rule: VerbRule, text: str) -> list[SheetFault]:
     try:
-        names = {part for _, part, _, _ in string.Formatter().parse(text) if part is not None}
+        parts = [part[1:] for part in string.Formatter().parse(text) if part[1] is not None]
     except ValueError as reason:
         return [SheetFault(key, repr(text), f"has a broken placeholder: {reason}")]
-    wrong = sorted(names ^ set(rule.placeholders))
+    if "\n" in text or "\r" in text:
+        return [SheetFault(key, repr(text), "must be one line")]
+    if any(spec or conversion for _, spec, conversion in parts):
+        return [SheetFault(key, repr(text), "must have its placeholders plain, without : or !")]
+    wrong = sorted({name for name, _, _ in parts if name is not None} ^ set(rule.placeholders))
     listed = ", ".join(rule.placeholders) or "none"
     return (
         [SheetFault(key, repr(text), f"must have the placeholders {listed}; wrong: {', '.join(wrong)}")]

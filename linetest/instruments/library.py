@@ -9,7 +9,8 @@ from __future__ import annotations
 
 import itertools
 import threading
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager
 from typing import Any, Protocol, cast
 
 from pyvisa import constants, errors, rname
@@ -20,6 +21,31 @@ from pyvisa.util import LibraryPath
 from linetest.instruments.sessions import Conversation, InProcessSession, Session, SocketSession
 
 _numbers = itertools.count(1)
+
+
+class Cancel(threading.Event):
+    """Ends every wait of every session once set, except inside :meth:`shielded`."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self._shields = 0
+
+    def is_set(self) -> bool:
+        """Whether waits are to end now."""
+        return not self._shields and super().is_set()
+
+    @contextmanager
+    def shielded(self) -> Iterator[None]:
+        """For what must not be cut short, such as switching off; a cancel that comes meanwhile holds afterwards.
+
+        Yields:
+            Nothing.
+        """
+        self._shields += 1
+        try:
+            yield
+        finally:
+            self._shields -= 1
 
 
 class SimulatedDevice(Protocol):
@@ -33,7 +59,7 @@ class StationLibrary(VisaLibraryBase):
     """Routes each resource to where it is answered. Made by :meth:`create`."""
 
     sessions: dict[int, Any]
-    cancel: threading.Event
+    cancel: Cancel
     _devices: dict[str, SimulatedDevice]
     _handles: itertools.count[int]
     _fallback_name: str | None
@@ -54,7 +80,7 @@ class StationLibrary(VisaLibraryBase):
         """
         library = cls(LibraryPath(f"linetest-{next(_numbers)}", "station"))
         library.sessions = {}
-        library.cancel = threading.Event()
+        library.cancel = Cancel()
         library._devices = {_canonical(name): device for name, device in (simulated or {}).items()}
         library._handles = itertools.count(1)
         library._fallback_name = fallback

@@ -12,10 +12,12 @@ import random
 import re
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from typing import Any
 
 from pyvisa import ResourceManager
+from pyvisa.errors import Error as VisaError
 
 from linetest.errors import InstrumentError, LinkError, LinkGarbled, LinkLost, LinkTimeout
 from linetest.instruments.dialect import Dialect
@@ -29,8 +31,7 @@ LARGEST_REPLY = 1 << 20
 FENCE_LINES = 64
 QUEUE_READS = 32
 RESYNC_MS = 1000
-NOT_A_NUMBER = 9.91e37  # SCPI-1999, volume 1, 7.2.1.4: NAN; infinity is 9.9e37
-INFINITE = 9.9e37
+INFINITE = 9.9e37  # SCPI-1999, volume 1, 7.2.1: infinity; not-a-number is 9.91e37, beyond it
 
 
 class Link:
@@ -68,6 +69,7 @@ class Link:
         self._lock = threading.RLock()
         self._resource: Any = None
         self._dirty = False
+        self._limit_ms = float("inf")
 
     def open(self) -> str:
         """Open the conversation and check who answers.
@@ -91,6 +93,23 @@ class Link:
                     resource.close()
                 except Exception:  # noqa: BLE001  (a dead peer must not keep us from forgetting it)
                     self._dirty = True
+
+    @contextmanager
+    def hurried(self, limit_ms: int) -> Iterator[None]:
+        """Cap every single wait for a while, so that what must be bounded in time is.
+
+        Args:
+            limit_ms: Longest wait for a connection, a write or an answer.
+
+        Yields:
+            Nothing.
+        """
+        with self._lock:
+            before, self._limit_ms = self._limit_ms, float(limit_ms)
+            try:
+                yield
+            finally:
+                self._limit_ms = before
 
     def ask(self, text: str, *, timeout_ms: int | None = None) -> str:
         """Ask and return the answer, without its line end.
@@ -133,16 +152,25 @@ class Link:
     def _open(self) -> None:
         self.close()
         with translating(self.resource):
-            resource = self._manager.open_resource(self.resource, open_timeout=self.dialect.open_timeout_ms)
+            resource = self._manager.open_resource(
+                self.resource, open_timeout=int(min(self.dialect.open_timeout_ms, self._limit_ms))
+            )
             resource.write_termination = ""  # type: ignore[attr-defined]  # message-based resources have it
             resource.read_termination = "\n"  # type: ignore[attr-defined]  # terminators are bytes we send ourselves
             self._resource = resource
         self._dirty = False
+        try:
+            self._identify()
+        except BaseException:
+            # Left open, it would be used next time without anybody knowing who answers.
+            self.close()
+            raise
+
+    def _identify(self) -> None:
         if not self.dialect.identify:
             return
         answer = self._exchange(self.dialect.identify, self.dialect.timeout_ms)
         if self._expected and not re.fullmatch(self._expected, answer):
-            self.close()
             raise LinkLost(
                 self.resource,
                 self.dialect.identify,
@@ -157,7 +185,7 @@ class Link:
             self._reopen()
         try:
             stale = self._library.opened_session(self._resource.session).stale()
-        except OSError:
+        except (OSError, VisaError):
             self._reopen()
             return
         if stale:
@@ -178,9 +206,9 @@ class Link:
         try:
             with translating(self.resource):
                 self._resource.clear()
-            number = self._rng.randrange(1, 255)
+            number = self._rng.randrange(2, 255)  # 0 and 1 are what a switch answers
             self._send(f"*ESE {number};*ESE?", RESYNC_MS)
-            deadline_s = time.monotonic() + RESYNC_MS / 1000.0
+            deadline_s = time.monotonic() + min(RESYNC_MS, self._limit_ms) / 1000.0
             for _ in range(FENCE_LINES):
                 left_ms = (deadline_s - time.monotonic()) * 1000.0
                 if left_ms <= 0:
@@ -235,19 +263,24 @@ class Link:
         return reports
 
     def _exchange(self, text: str, timeout_ms: float) -> str:
-        self._send(text, timeout_ms)
-        if self.dialect.query_delay_ms:
-            time.sleep(self.dialect.query_delay_ms / 1000.0)
-        return self._receive(text, timeout_ms)
+        try:
+            self._send(text, timeout_ms)
+            if self.dialect.query_delay_ms:
+                time.sleep(self.dialect.query_delay_ms / 1000.0)
+            return self._receive(text, timeout_ms)
+        except BaseException:
+            # Its answer may still be on its way, whatever ended the wait for it.
+            self._dirty = True
+            raise
 
     def _send(self, text: str, timeout_ms: float) -> None:
         self._note(">", text)
         with translating(self.resource, text):
-            self._resource.timeout = timeout_ms
+            self._resource.timeout = min(timeout_ms, self._limit_ms)
             self._library.write(self._resource.session, text.encode(self.dialect.encoding) + b"\n")
 
     def _receive(self, text: str, timeout_ms: float) -> str:
-        deadline_s = time.monotonic() + timeout_ms / 1000.0
+        deadline_s = time.monotonic() + min(timeout_ms, self._limit_ms) / 1000.0
         reply = bytearray()
         while not reply.endswith(b"\n"):
             left_ms = (deadline_s - time.monotonic()) * 1000.0

@@ -66,7 +66,7 @@ class Role:
         if rule.pattern is None:
             return answer.strip()
         found = rule.pattern.fullmatch(answer.strip())
-        if found is None:
+        if found is None or found["v"] is None:
             raise self._garbled(text, f"the answer {answer[:60]!r} does not look like {rule.pattern.pattern!r}")
         return found["v"]
 

@@ -258,11 +258,12 @@ class SocketSession(_Attributes):
             The bytes, as a rule none.
 
         Raises:
-            OSError: The peer closed the connection or it broke.
+            OSError: The peer closed the connection, it broke, or the peer does not stop talking.
         """
         found = bytes(self._buffer)
         self._buffer.clear()
-        while True:
+        deadline_s = time.monotonic() + CLEAR_S
+        while time.monotonic() < deadline_s:
             try:
                 data = self._socket.recv(CHUNK)
             except BlockingIOError:
@@ -270,6 +271,7 @@ class SocketSession(_Attributes):
             if not data:
                 raise ConnectionResetError
             found += data
+        raise ConnectionAbortedError
 
     def close(self) -> None:
         """Close the socket."""

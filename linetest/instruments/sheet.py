@@ -136,7 +136,7 @@ class StationSheet(_Strict):
     name: Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9_-]{0,31}$")]
     noise: NoiseFacts
     instruments: Annotated[tuple[InstrumentEntry, ...], Field(alias="instrument", strict=False)]
-    safe_off: Annotated[tuple[str, ...], Field(strict=False)] = ("noise_source", "unit_port", "supply")
+    safe_off: Annotated[tuple[str, ...], Field(strict=False)] = ("supply", "noise_source", "unit_port")
 
     @model_validator(mode="after")
     def _complete(self) -> StationSheet:

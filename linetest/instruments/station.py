@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import fcntl
 import os
+import time
 from collections import deque
 from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
@@ -19,7 +20,8 @@ from linetest.instruments.roles import Attenuator, NoiseSource, PowerMeter, Supp
 from linetest.instruments.sheet import InstrumentEntry, StationSheet
 
 TRANSCRIPT_LINES = 20_000
-SAFE_TRIES = 2
+SAFE_S = 8.0
+SAFE_WAIT_MS = 1000
 
 
 @dataclass(frozen=True, slots=True)
@@ -85,31 +87,35 @@ class Station:
     def make_safe(self) -> dict[str, str]:
         """Switch noise, carrier and supply off in the sheet's order, each verified by reading back.
 
-        Works after a cancel, and over a fresh link where the old one is of no use.
+        Every output is tried once before any is tried again, over a fresh link; no cancel cuts it short, a second one
+        neither. Each wait is capped, and no second try begins after the time is up.
 
         Returns:
             By role: empty text where it is off, else why that could not be shown.
         """
-        # A cancel ended the measurement; left set it would end this as well.
-        self._library.cancel.clear()
         switches: Mapping[str, Callable[[], None]] = {
             "noise_source": self.noise_source.output_off,
             "unit_port": self.unit_port.carrier_off,
             "supply": self.supply.output_off,
         }
-        return {role: self._switched_off(role, switches[role]) for role in self.sheet.safe_off}
+        deadline_s = time.monotonic() + SAFE_S
+        with self._library.cancel.shielded():
+            report = {role: self._switched_off(role, switches[role]) for role in self.sheet.safe_off}
+            for role, why in report.items():
+                if why and time.monotonic() < deadline_s:
+                    report[role] = self._switched_off(role, switches[role])
+        # The cancel has done its work: what is asked next is asked anew.
+        self._library.cancel.clear()
+        return report
 
     def _switched_off(self, role: str, switch_off: Callable[[], None]) -> str:
-        why = ""
-        for _ in range(SAFE_TRIES):
-            try:
+        try:
+            with self.links[role].hurried(SAFE_WAIT_MS):
                 switch_off()
-            except LinkError as reason:
-                why = str(reason)
-                self.links[role].close()
-            else:
-                return ""
-        return why
+        except Exception as reason:  # noqa: BLE001  (nothing that happens to one output may keep the others on)
+            self.links[role].close()
+            return str(reason) or repr(reason)
+        return ""
 
     def close(self) -> None:
         """Close every link."""

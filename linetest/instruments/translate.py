@@ -60,7 +60,11 @@ def translated(reason: BaseException, resource: str, command: str) -> LinkError:
         The error to raise from it.
     """
     if isinstance(reason, errors.VisaIOError):
-        return _of_status(StatusCode(reason.error_code), resource, command)
+        try:
+            status = StatusCode(reason.error_code)
+        except ValueError:  # makers' libraries have numbers of their own
+            return LinkLost(resource, command, f"VISA says {reason.error_code}")
+        return _of_status(status, resource, command)
     if isinstance(reason, UnicodeDecodeError):
         return LinkGarbled(resource, command, f"the answer is not text: {bytes(reason.object)[:40]!r}")
     if isinstance(reason, TimeoutError):

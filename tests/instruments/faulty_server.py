@@ -11,6 +11,18 @@ from types import TracebackType
 
 NO_ERROR = '0,"No error"'
 IDENTITY = "Brackwater Telemetry,AT-64,AT64-0031,1.0"
+ANSWERS = {
+    "": b"20.00\n",
+    "hang": b"",
+    "twice": b"20.00\n99.00\n",
+    "half": b"20.",
+    "garbage": b"\xff\xfe\x80\n",
+    "words": b"hello\n",
+    "blank": b"\n20.00\n",
+    "not a number": b"9.91E37\n",
+    "endless": b"7" * (3 << 20),
+    "carriage return": b"20.00\r\n",
+}
 
 
 class FaultyServer:
@@ -19,6 +31,7 @@ class FaultyServer:
     def __init__(self) -> None:
         self.fault = ""
         self.identity = IDENTITY
+        self.silent: set[str] = set()
         self.heard: list[str] = []
         self._listener = socket.create_server(("127.0.0.1", 0))
         self._open: list[socket.socket] = []
@@ -60,6 +73,11 @@ class FaultyServer:
                     if fence := re.fullmatch(r"\*ESE (\d+);\*ESE\?", text):
                         mask = fence[1]
                         connection.sendall(f"{mask}\n".encode())
+                    elif text in self.silent:
+                        pass
+                    elif text == "late reject;:SYST:ERR?":
+                        connection.sendall(b'-222,"Data out of range"\n')
+                        time.sleep(0.3)
                     elif text == "*IDN?":
                         connection.sendall(f"{self.identity}\n".encode())
                     elif text == "SYST:ERR?":
@@ -67,6 +85,9 @@ class FaultyServer:
                         connection.sendall(f"{entry}\n".encode())
                     elif text.startswith("BLAH"):
                         queue.append('-113,"Undefined header"')
+                    elif text.endswith(";:SYST:ERR?") and self.fault == "killed at setting":
+                        self.fault = ""
+                        connection.shutdown(socket.SHUT_RDWR)
                     elif text.endswith(";:SYST:ERR?"):
                         connection.sendall(b'0,"No error"\n')
                     elif text == "INP:ATT?":
@@ -77,26 +98,11 @@ class FaultyServer:
         match fault:
             case "killed":
                 connection.shutdown(socket.SHUT_RDWR)
-            case "hang":
-                pass
             case "late":
                 time.sleep(0.4)
                 connection.sendall(b"99.00\n")
-            case "twice":
-                connection.sendall(b"20.00\n99.00\n")
-            case "half":
-                connection.sendall(b"20.")
-            case "garbage":
-                connection.sendall(b"\xff\xfe\x80\n")
-            case "words":
-                connection.sendall(b"hello\n")
-            case "blank":
-                connection.sendall(b"\n20.00\n")
-            case "not a number":
-                connection.sendall(b"9.91E37\n")
-            case "endless":
-                connection.sendall(b"7" * (3 << 20))
-            case "carriage return":
-                connection.sendall(b"20.00\r\n")
+            case "babble":
+                while True:
+                    connection.sendall(b"7" * (1 << 20))
             case _:
-                connection.sendall(b"20.00\n")
+                connection.sendall(ANSWERS[fault])

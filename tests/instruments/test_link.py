@@ -57,6 +57,7 @@ def attenuator(server: FaultyServer, library: StationLibrary) -> Iterator[Attenu
         ("blank", LinkGarbled),
         ("not a number", LinkGarbled),
         ("endless", LinkGarbled),
+        ("babble", LinkGarbled),
     ],
 )
 def test_a_fault_has_its_error_in_bounded_time_and_the_next_answer_is_new(
@@ -89,8 +90,10 @@ def test_a_rejected_command_is_named_with_the_instruments_own_error(attenuator: 
         attenuator.link.tell("BLAH 1")
 
 
-def test_a_setter_is_never_said_twice(server: FaultyServer, attenuator: Attenuator) -> None:
-    server.fault = "killed"
+@pytest.mark.parametrize("fault", ["killed at setting", "killed"])
+def test_a_setter_is_never_said_twice(server: FaultyServer, attenuator: Attenuator, fault: str) -> None:
+    """Whether the connection dies while it is said or while it is read back."""
+    server.fault = fault
     with pytest.raises(LinkLost):
         attenuator.set_attenuation_db(20.0)
     assert sum(text.startswith("INP:ATT 20") for text in server.heard) == 1
@@ -103,6 +106,23 @@ def test_another_instrument_behind_the_same_address_is_refused(server: FaultySer
     server.identity = "Brackwater Telemetry,AT-64,AT64-9999,1.0"
     with pytest.raises(LinkLost, match="another instrument answers"):
         attenuator.read_attenuation_db()
+
+
+def test_a_link_whose_peer_did_not_say_who_it_is_is_not_used(server: FaultyServer, attenuator: Attenuator) -> None:
+    server.fault = "killed"
+    with pytest.raises(LinkLost):
+        attenuator.read_attenuation_db()
+    server.silent = {"*IDN?"}
+    for _ in range(2):
+        with pytest.raises(LinkTimeout):
+            attenuator.read_attenuation_db()
+    assert server.heard.count("INP:ATT?") == 1
+
+
+def test_a_late_entry_of_the_error_queue_is_not_the_next_answer(attenuator: Attenuator) -> None:
+    with pytest.raises(LinkTimeout):
+        attenuator.link.tell("late reject")
+    assert attenuator.read_attenuation_db() == 20.0
 
 
 def test_a_cancel_from_another_thread_ends_a_wait(
@@ -137,6 +157,10 @@ def test_queries_through_many_links_leave_no_session_behind(server: FaultyServer
 @pytest.mark.parametrize("status", [status for status in StatusCode if status < 0])
 def test_every_error_that_visa_defines_becomes_ours(status: StatusCode) -> None:
     assert isinstance(translated(visa_errors.VisaIOError(status), "R", "C"), LinkError)
+
+
+def test_an_error_number_that_only_a_maker_knows_becomes_ours() -> None:
+    assert isinstance(translated(visa_errors.VisaIOError(-1), "R", "C"), LinkLost)
 
 
 @pytest.mark.parametrize("kind", FOREIGN)
