@@ -6,6 +6,7 @@ both from memory.
 
 from __future__ import annotations
 
+import math
 import re
 import threading
 from collections import deque
@@ -242,7 +243,7 @@ class Conversation:
     def _unit(self, unit: str, path: str) -> tuple[str | None, str]:
         if not unit:
             return None, path
-        header, _, tail = unit.partition(" ")
+        header, _, tail = unit.replace("\t", " ").partition(" ")
         arguments = [part.strip() for part in split_outside_quotes(tail, ",")] if tail.strip() else []
         if header.startswith("*"):
             name = header.upper()
@@ -338,7 +339,10 @@ def number(text: str) -> float:
     """
     if not re.fullmatch(r"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?", text):
         raise ScpiError(-120, "Numeric data error") if text[:1].isdigit() else ScpiError(-104, "Data type error")
-    return float(text)
+    value = float(text)
+    if not math.isfinite(value):
+        raise ScpiError(-222, "Data out of range")
+    return value
 
 
 def switch(text: str) -> bool:

@@ -170,7 +170,7 @@ def unit_truth(serial: str) -> UnitTruth | None:
         Its truth, or None where the bench has no such unit.
     """
     head, _, digits = serial.partition("-")
-    if head not in MODELS or len(digits) != 6 or not digits.isdigit():
+    if head not in MODELS or len(digits) != 6 or not (digits.isascii() and digits.isdigit()):
         return None
     rng = np.random.default_rng([zlib.crc32(serial.encode("ascii")), 2])
     good = UnitTruth(

@@ -34,6 +34,8 @@ def test_short_and_long_forms_in_any_case_are_one_command(header: str) -> None:
         ("INP:ATT 3.1", -222),
         ("INP:ATT loud", -104),
         ("*ESE 999", -222),
+        ("INP:ATT 1e999", -222),
+        ("INP:ATT 5;INP:ATT?", -113),
     ],
 )
 def test_what_cannot_be_obeyed_is_reported_by_its_number(message: str, number: int) -> None:
@@ -57,6 +59,47 @@ def test_the_error_queue_overflows_as_the_standard_says() -> None:
 
 def test_power_on_and_command_errors_stand_in_the_event_register_once() -> None:
     assert _say("supply", "BLAH", "*ESR?", "*ESR?") == "160\n0\n"
+
+
+@pytest.mark.parametrize("message", ["INP:ATT 5;ATT?", "INP:ATT 5;:INP:ATT?", "INP:ATT 5;*OPC;ATT?", "INP:ATT\t5;ATT?"])
+def test_a_leading_colon_returns_to_the_root_and_without_it_the_path_carries_over(message: str) -> None:
+    assert _say("attenuator", message) == "5.00\n"
+
+
+def test_a_message_may_come_in_pieces() -> None:
+    conversation = Bench(seed=1).devices["attenuator"].connect()
+    for piece in (b"INP:A", b"TT 7.5;AT", b"T?", b"\n"):
+        assert not conversation.pending()
+        conversation.feed(piece)
+    assert conversation.take(99) == (b"7.50\n", True)
+
+
+def test_the_status_byte_shows_error_queue_and_event_summary() -> None:
+    assert _say("supply", "*CLS", "*STB?") == "0\n"
+    assert _say("supply", "*CLS", "BLAH", "*STB?") == "4\n"
+    assert _say("supply", "*CLS", "*ESE 32", "*SRE 32", "BLAH", "*STB?") == "100\n"
+
+
+@pytest.mark.parametrize("serial", ["BQ4-\xb2\xb2\xb2\xb2\xb2\xb2", "BQ4-12345", "", "nobody"])
+def test_a_unit_that_the_handler_does_not_have_is_reported(serial: str) -> None:
+    assert _say("unit_port", f'FIXT:LOAD "{serial}"', "SYST:ERR?").startswith("-241,")
+
+
+HEADERS = ("FIXT:LOAD", "UNIT:MODE", "UNIT:CARR", "COUN:STAR", "COUN:UNT?", "COUN:STOP", "UNIT:IDEN?", "*ESE", "*RST")
+
+
+@given(
+    st.lists(st.tuples(st.sampled_from(HEADERS), st.text(st.characters(max_codepoint=255), max_size=12)), max_size=6)
+)
+@settings(max_examples=300, deadline=None)
+def test_no_argument_of_a_real_header_crashes_the_parser(said: list[tuple[str, str]]) -> None:
+    conversation = Bench(seed=1).devices["unit_port"].connect()
+    for header, argument in said:
+        conversation.feed(f"{header} {argument}".encode("latin-1") + b"\n")
+    while conversation.pending():
+        conversation.take(1 << 16)
+    conversation.feed(b"\n*ESE 5;*ESE?\n")
+    assert conversation.take(99) == (b"5\n", True)
 
 
 @given(st.binary(max_size=200))
