@@ -40,6 +40,8 @@ METER_OVERLOAD_DBM = 10.0
 METER_SIGMA_DB = 0.01
 METER_SIGMA_AT_S = 0.02
 MUTED_CARRIER_DB = 80.0
+LINEARITY_CELL_DB = 0.25
+LINEARITY_RAMP = 0.2
 
 
 @dataclass(frozen=True)
@@ -54,7 +56,7 @@ class Truth:
         meter_offset_db: Error of the meter's calibration factor, dB.
         noise_response_db: How much more the meter shows for noise than for a carrier of the same power, dB.
         attenuation_db: True attenuation of every setting, dB; setting n is n times 0.25 dB.
-        linearity_db: Meter's linearity error by level, in cells of 0.1 dB, dB.
+        linearity_db: Meter's linearity error by level, in cells of 0.25 dB with a ramp to the next, dB.
     """
 
     density_dbm_hz: float
@@ -146,8 +148,14 @@ class Truth:
         """
         power_mw = db_to_ratio(carrier_dbm) + db_to_ratio(noise_dbm + self.noise_response_db)
         level_dbm = ratio_to_db(power_mw + db_to_ratio(METER_FLOOR_DBM))
-        cell = int(np.floor(level_dbm * 10.0)) % self.linearity_db.size
+        # A meter's error changes smoothly with level: a reading that scatters must not jump between errors.
+        place = level_dbm / LINEARITY_CELL_DB
+        cell = int(np.floor(place)) % self.linearity_db.size
+        beside = (cell + 1) % self.linearity_db.size
+        error_db = float(
+            np.interp(place % 1.0, (1.0 - LINEARITY_RAMP, 1.0), (self.linearity_db[cell], self.linearity_db[beside]))
+        )
         # Averaging over T in a noise bandwidth B leaves a relative spread of 1/sqrt(BT).
         sigma_db = METER_SIGMA_DB * float(np.sqrt(METER_SIGMA_AT_S / averaging_s))
         spread_db = sigma_db * float(rng.standard_normal())
-        return level_dbm + self.meter_offset_db + float(self.linearity_db[cell]) + spread_db
+        return level_dbm + self.meter_offset_db + error_db + spread_db

@@ -69,7 +69,15 @@ def setting_for(bay: Bay, task: StepTask, carrier: CarrierReading) -> EbN0Settin
         CalibrationError: No calibrated setting comes near enough.
     """
     rate_bps = bay.sheet.mode(task.check.mode).bit_rate_bps
-    return set_ebn0(bay.calibration, carrier, rate_bps, task.nominal_ebn0_db, task.check.setting_rule)
+    return set_ebn0(
+        bay.calibration,
+        carrier,
+        rate_bps,
+        task.nominal_ebn0_db,
+        task.check.setting_rule,
+        # The run is VOID only beyond this change, so as much may have happened at a step.
+        carrier_change_db=bay.sheet.procedure.carrier.max_change_db,
+    )
 
 
 def run_step(bay: Bay, task: StepTask, carrier: CarrierReading) -> Iterator[Event]:

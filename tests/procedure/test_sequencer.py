@@ -4,11 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from pathlib import Path
+from typing import Any
 
 import pytest
 
 from linetest.bench import demo_lot
 from linetest.errors import LinkTimeout
+from linetest.noise import CarrierReading, EbN0Setting, NoiseCalibration, set_ebn0
 from linetest.procedure import Disposition, Judged, Judgement, ReadingTaken, RunEnded, RunOrder, RunStarted, StepStarted
 from linetest.procedure.sequencer import conclude, run_unit
 from linetest.units import ebn0_db
@@ -82,6 +84,24 @@ def test_the_carrier_is_read_before_the_first_and_after_the_last_step(world: Wor
     _, events = world.run("BQ4-000102")
     names = [event.name for event in events if isinstance(event, ReadingTaken) and event.check == "carrier"]
     assert names == ["carrier power before", "carrier power after", "carrier change"]
+
+
+def test_the_change_of_the_carrier_that_a_run_allows_is_in_the_uncertainty(
+    world: World, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """GUM 4.3.7: a quantity known only to lie within half width a has standard uncertainty a/sqrt(3)."""
+    carriers: list[CarrierReading] = []
+
+    def noted(calibration: NoiseCalibration, carrier: CarrierReading, *rest: Any, **more: Any) -> EbN0Setting:
+        carriers.append(carrier)
+        return set_ebn0(calibration, carrier, *rest, **more)
+
+    monkeypatch.setattr("linetest.procedure.steps.set_ebn0", noted)
+    _, events = world.run("BQ4-000103")
+    (step, *_) = [event for event in events if isinstance(event, StepStarted)]
+    still = set_ebn0(world.calibration, carriers[0], 2.048e6, step.nominal_ebn0_db)
+    allowed_db = world.limits.procedure.carrier.max_change_db
+    assert step.u_db**2 - still.u_db**2 == pytest.approx(allowed_db**2 / 3.0, rel=1e-6)
 
 
 def test_a_listener_that_fails_leaves_the_station_safe(world: World) -> None:
