@@ -18,6 +18,7 @@ from linetest.decision.plan import Plan, boundary_counts
 from linetest.errors import ParameterError, PlanError
 
 ROUNDS = 12
+HALVINGS = 5
 MOST_LOOKS = 20_000
 CLOSE = 0.004
 
@@ -75,11 +76,14 @@ def _designed(
     gap_a, gap_r = np.log((1.0 - alpha) / beta) * scale, np.log((1.0 - beta) / alpha) * scale
     last = int(np.floor(slope * look_bits * looks))
     best: Plan | None = None
+    beyond: tuple[float, float] | None = None
     for turn in range(ROUNDS):
         plan = _plan(good, limit, look_bits, looks, slope, gap_a, gap_r, last, weights)
         met = plan.producer_risk <= alpha and plan.consumer_risk <= beta
         if met and (best is None or gap_a + gap_r < best.accept_gap + best.reject_gap):
             best = plan
+        elif not met:
+            beyond = gap_a, gap_r
         short_a = np.log(max(plan.consumer_risk, 1e-12) / beta)
         short_r = np.log(max(plan.producer_risk, 1e-12) / alpha)
         if met and max(-short_a, -short_r) < CLOSE:
@@ -96,6 +100,15 @@ def _designed(
             f"risks {alpha:g} (producer) and {beta:g} (consumer) cannot be met between BER {good:.3g} and {limit:.3g} "
             f"within {look_bits * looks} bits; the best fixed test needs {needed}"
         )
+    if beyond is not None and min(best.consumer_risk / beta, best.producer_risk / alpha) < 1.0 - CLOSE:
+        # Risks jump with whole counts and the search may have stopped far inside: walk towards the nearest miss.
+        for _ in range(HALVINGS):
+            middle = 0.5 * (best.accept_gap + beyond[0]), 0.5 * (best.reject_gap + beyond[1])
+            plan = _plan(good, limit, look_bits, looks, slope, *middle, last, weights)
+            if plan.producer_risk <= alpha and plan.consumer_risk <= beta:
+                best = plan
+            else:
+                beyond = middle
     return best
 
 

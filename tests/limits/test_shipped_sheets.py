@@ -70,3 +70,16 @@ def test_burst_weights_of_the_decoder_lie_between_its_simulated_neighbours() -> 
     rows = {row.ebn0_db: row.squared_errors / row.errors for row in DECODER_ROWS["conv-1/2"]}
     dispersion = load_model("BW-Q4C", SHIPPED).modes[0].dispersion
     assert rows[3.5] < dispersion < rows[3.0]
+
+
+@pytest.mark.parametrize("offset_db", [-0.4, -0.35, -0.07, -0.02, 0.13, 0.4])
+def test_every_step_can_be_planned_wherever_the_attenuator_lands(offset_db: float) -> None:
+    """At the station's uncertainty a good unit must never wait for a decision because no plan was found."""
+    sheet = load_model("BW-Q4")
+    check = sheet.procedure.ber[0]
+    for nominal_db in check.steps:
+        ebn0_db = round(nominal_db + offset_db, 2)
+        for u_db in (0.058, 0.065, check.max_u_db):
+            guarded = derive_step(sheet, check, nominal_db, ebn0_db=ebn0_db, u_db=u_db, shortest_gate_s=0.001).guarded
+            assert guarded.averaged_consumer_risk <= check.consumer_risk
+            assert guarded.averaged_producer_risk <= check.step_producer_risk
